@@ -1,0 +1,23 @@
+"""Did every run reach its end?"""
+
+from fem.checks.facts import Facts
+from fem.findings import Finding
+from fem.march import Outcome
+
+
+def check(facts: Facts) -> list[Finding]:
+    """Report a run that did not finish, with how far it came."""
+    found = []
+    for run in facts.study.runs:
+        if run.outcome is Outcome.finished:
+            continue
+        reached = facts.names.time(float(run.history.t1[-1])) if len(run.history.t1) else "the first step"
+        found.append(
+            Finding(
+                "outcome",
+                True,
+                f"a run on {len(run.mesh.cells)} cells did not finish: {run.outcome.value}; it reached {reached}",
+                "look at what the data do at that time; a table that jumps or a property near zero is the usual cause",
+            )
+        )
+    return found

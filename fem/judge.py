@@ -1,0 +1,126 @@
+"""Hold a study against what was asked: bands against the wanted ones, limits against bands, checks against the data."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.checks import check_all
+from fem.checks.facts import Facts, Goal, Namer, RegionStock
+from fem.docket import Docket
+from fem.figures import Figures
+from fem.findings import Finding
+from fem.history import Key
+from fem.limits import closing_goal, derived, judge_limit
+from fem.problem import Problem
+from fem.run import Gauges
+from fem.study import Study
+from fem.tables import figures
+from fem.verdicts import Verdict
+
+NARROWEST = 0.02
+"""A limit is not chased below this part of the wanted band."""
+
+
+@dataclass(frozen=True)
+class Need:
+    """How far one goal is from its wanted band.
+
+    Attributes
+    ----------
+    goal : Goal
+    space, time, total : float
+        Largest band over wanted band; 1 or less is enough.
+    when : (n,) bool
+        Instants of the grid at which the band is too wide.
+    t : float
+        Where it is widest, s.
+    """
+
+    goal: Goal
+    space: float
+    time: float
+    total: float
+    when: NDArray[np.bool_]
+    t: float
+
+
+@dataclass(frozen=True)
+class Judgement:
+    """A study, judged.
+
+    Attributes
+    ----------
+    figures : Figures
+    verdicts : tuple of Verdict
+    findings : tuple of Finding
+    needs : tuple of Need
+        One per goal, the farthest from its wanted band first.
+    """
+
+    figures: Figures
+    verdicts: tuple[Verdict, ...]
+    findings: tuple[Finding, ...]
+    needs: tuple[Need, ...]
+
+    @property
+    def settled(self) -> bool:
+        """True when every wanted band is reached and every limit settled."""
+        return all(need.total <= 1.0 for need in self.needs)
+
+
+def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
+    """Return the bands that the docket asks for."""
+    wanted, goals = docket.wanted, []
+    own = {gauge.name: gauge.band for gauge in docket.gauges}
+    for key in figures.keys:
+        band: float | None = None
+        if key.kind == "gauge":
+            band = own.get(key.name) or wanted.gauges
+        elif key.kind in ("highest", "lowest", "mean"):
+            band = wanted.regions
+        elif key.kind == "flow":
+            band = wanted.heat
+        elif key.kind == "stored":
+            band = wanted.stored
+        if band is not None:
+            goals.append(Goal(key, float(band), "wanted band"))
+    return goals
+
+
+def judge(
+    docket: Docket, study: Study, problem: Problem, gauges: Gauges, stocks: tuple[RegionStock, ...], names: Namer
+) -> Judgement:
+    """Return figures, verdicts, findings and needs of a study."""
+    table = figures(study, problem, derived(docket))
+    goals = wanted_goals(docket, table)
+    verdicts = tuple(judge_limit(docket, limit, table) for limit in docket.limits)
+    floor = NARROWEST * float(docket.wanted.gauges)
+    asked = [closing_goal(docket, limit, v, floor) for limit, v in zip(docket.limits, verdicts, strict=True)]
+    goals += [goal for goal in asked if goal is not None]
+    facts = Facts(study, problem, table, gauges, tuple(goals), stocks, names)
+    needs = sorted((need_of(goal, table) for goal in goals), key=lambda need: -need.total)
+    return Judgement(table, verdicts, check_all(facts), tuple(needs))
+
+
+def need_of(goal: Goal, table: Figures) -> Need:
+    """Return how far a goal is from its wanted band."""
+    i, counts = table.row(goal.key), goal.counts(table)
+    if not counts.any():
+        counts = np.arange(len(table.grid.t)) == int(np.argmin(np.abs(table.grid.t - goal.end)))
+    total = (table.space[i] + table.time[i]) / goal.wanted
+    worst = int(np.argmax(np.where(counts, total, -np.inf)))
+    return Need(
+        goal,
+        float(np.max(table.space[i][counts])) / goal.wanted,
+        float(np.max(table.time[i][counts])) / goal.wanted,
+        float(total[worst]),
+        counts & (total > 1.0),
+        float(table.grid.t[worst]),
+    )
+
+
+def too_wide(key: Key) -> str:
+    """Return a series as words for a sentence."""
+    words = {"gauge": "gauge", "flow": "heat flow through", "heat": "heat through", "stored": "stored heat", "mean": "mean of"}
+    return f'{words.get(key.kind, key.kind)} "{key.name}"' if key.name else f"{words.get(key.kind, key.kind)} of the section"

@@ -1,0 +1,260 @@
+"""One run on one mesh: march, and note what was asked for along the way."""
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
+
+from fem.conduction import Conduction
+from fem.history import History, Key
+from fem.locate import interpolation
+from fem.march import March, Outcome, Step
+from fem.mesh import Mesh
+from fem.problem import Problem
+from fem.stepping import Steps
+
+Floats = NDArray[np.float64]
+
+FRAMES = 120
+"""Fields kept per run: enough to draw the run again; between them histories are exact, pictures are not."""
+
+Watcher = Callable[[float], bool]
+"""Told the simulated time reached, s, after each step; False stops the run."""
+
+
+@dataclass(frozen=True)
+class Gauges:
+    """Named points.
+
+    Attributes
+    ----------
+    names : tuple of str
+    points : (n, 2) float
+        m.
+    """
+
+    names: tuple[str, ...]
+    points: Floats
+
+
+@dataclass
+class Run:
+    """What one march left.
+
+    Attributes
+    ----------
+    mesh : Mesh
+    outcome : Outcome
+    history : History
+        Series of every gauge, region, exposure.
+    steps : Steps
+        Can be replayed.
+    frame_times : (f,) float
+        s.
+    frames : (f, N) float
+        Temperatures at the frame times (right before them), K.
+    peak, low : (N,) float
+        Highest and lowest temperature of each node at any step, K.
+    peak_time : (N,) float
+        When the highest was reached, s.
+    face_heat, made : (n_faces,), (n_regions,) float
+        Heat in through each face and made in each region, J.
+    stored : float
+        Heat stored since the start, J.
+    start : (N,) float
+        K.
+    seconds : float
+        Wall time.
+    factorizations, solves : int
+    """
+
+    mesh: Mesh
+    outcome: Outcome
+    history: History
+    steps: Steps
+    frame_times: Floats
+    frames: Floats
+    peak: Floats
+    low: Floats
+    peak_time: Floats
+    face_heat: Floats
+    made: Floats
+    stored: float
+    start: Floats
+    seconds: float
+    factorizations: int = 0
+    where: dict[Key, NDArray[np.intp]] = field(default_factory=dict)
+
+
+class Recorder:
+    """Turns steps into rows of a history."""
+
+    def __init__(self, conduction: Conduction, gauges: Gauges) -> None:
+        self._c = conduction
+        self._probe: sp.csr_array = interpolation(conduction.mesh, gauges.points)
+        regions = conduction.mesh.plan.region_names
+        self._shares = [(name, share.nodes, share.size) for name, share in zip(regions, conduction.parts.volumes, strict=True)]
+        if len(regions) > 1:
+            volume = np.zeros(conduction.n)
+            for _, nodes, size in self._shares:
+                volume[nodes] += size
+            self._shares.append(("", np.arange(conduction.n), volume))
+        problem = conduction.problem
+        self._totals = problem.totals()
+        self._sum = np.array([[float(f.name == name) for f in problem.faces] for name in self._totals]).reshape(len(self._totals), -1)
+        self._faces = [f"{f.name} on {f.edge}" for f in problem.faces]
+        self._sources = [name for name, law in zip(regions, problem.source, strict=True) if law is not None]
+        self._makes = np.array([law is not None for law in problem.source])
+        self.keys = self._name_rows(gauges.names)
+        self.times: list[tuple[float, float]] = []
+        self._rows: list[tuple[Floats, Floats, Floats, Floats]] = []
+        self.heat = np.zeros(len(problem.faces))
+        self.made = np.zeros(len(problem.source))
+        self._start_heat = 0.0
+        self.where: list[list[int]] = []
+
+    def _name_rows(self, gauges: tuple[str, ...]) -> tuple[Key, ...]:
+        keys = [Key("gauge", name) for name in gauges]
+        keys += [Key(kind, name) for name, _, _ in self._shares for kind in ("highest", "lowest", "mean")]
+        keys.append(Key("stored", ""))
+        through = list(self._totals) + [name for name in self._faces if len(self._faces) > len(self._totals)]
+        keys += [Key("flow", name) for name in through] + [Key("heat", name) for name in through]
+        keys += [Key("made", name) for name in self._sources]
+        return tuple(keys)
+
+    def _state(self, T: Floats, d: Floats | None) -> tuple[Floats, Floats, list[int]]:
+        """Return values and rates of all temperature rows and of the stored heat, and the nodes of the extremes."""
+        rate = np.full(self._c.n, np.nan) if d is None else d
+        values, rates, nodes = [self._probe @ T], [self._probe @ rate], []
+        for _, mine, size in self._shares:
+            Tm = T[mine]
+            high, low = mine[np.argmax(Tm)], mine[np.argmin(Tm)]
+            total = size.sum()
+            values.append(np.array([T[high], T[low], size @ Tm / total]))
+            rates.append(np.array([rate[high], rate[low], size @ rate[mine] / total]))
+            nodes += [int(high), int(low)]
+        values.append(np.array([self._c.heat(T).sum() - self._start_heat]))
+        rates.append(np.array([self._c.capacity(T) @ rate]))
+        return np.concatenate(values), np.concatenate(rates), nodes
+
+    def begin(self, T: Floats) -> None:
+        """Note the start, from which stored heat is counted."""
+        self._start_heat = float(self._c.heat(T).sum())
+
+    def add(self, step: Step) -> None:
+        """Append a step."""
+        self.heat = self.heat + step.impulse
+        both = np.vstack((self._sum, np.eye(len(self.heat)))) if len(self._faces) > len(self._totals) else self._sum
+        dt = step.t1 - step.t0
+        v0, d0, _ = self._state(step.T0, step.d0)
+        v1, d1, nodes = self._state(step.T1, step.d1)
+        heat0, heat1 = both @ self.heat, both @ (self.heat + step.heat)
+        made0, made1 = self.made, self.made + step.made
+        flow0, flow1, mean = both @ step.flow0, both @ step.flow, both @ step.heat / dt
+        made_rate = (step.made / dt)[self._makes]
+        self._rows.append(
+            (
+                np.concatenate((v0, flow0, heat0, made0[self._makes])),
+                np.concatenate((v1, flow1, heat1, made1[self._makes])),
+                np.concatenate((d0, mean, flow0, made_rate)),
+                np.concatenate((d1, mean, flow1, made_rate)),
+            )
+        )
+        self.times.append((step.t0, step.t1))
+        self.where.append(nodes)
+        self.heat, self.made = self.heat + step.heat, made1
+
+    def history(self) -> History:
+        """Return all rows so far."""
+        v0, v1, d0, d1 = (np.array([row[i] for row in self._rows]).reshape(-1, len(self.keys)).T for i in range(4))
+        t = np.array(self.times).reshape(-1, 2)
+        return History(self.keys, t[:, 0].copy(), t[:, 1].copy(), v0, v1, d0, d1)
+
+    def where_of(self) -> dict[Key, NDArray[np.intp]]:
+        """Return, for each row of extremes, the node at which it was found at the end of each step."""
+        nodes = np.array(self.where, dtype=np.intp).reshape(-1, 2 * len(self._shares))
+        names = [Key(kind, name) for name, _, _ in self._shares for kind in ("highest", "lowest")]
+        return {key: nodes[:, i] for i, key in enumerate(names)}
+
+
+def run(
+    mesh: Mesh,
+    problem: Problem,
+    gauges: Gauges,
+    *,
+    tolerance: float,
+    first: float = 1.0,
+    steps: Steps | None = None,
+    frame_times: Floats | None = None,
+    watch: Watcher | None = None,
+) -> Run:
+    """March once and return what was seen; a run that did not finish says so in its outcome.
+
+    Parameters
+    ----------
+    mesh, problem, gauges
+        What to solve and where to look.
+    tolerance : float
+        Local error per step, K.
+    first : float
+        First step after each jump, s.
+    steps : Steps, optional
+        Replay these.
+    frame_times : (f,) float, optional
+        Step ends at which to keep the field, s; default: all, thinned to `FRAMES`.
+    watch : callable, optional
+        Progress and cancel.
+    """
+    began = time.perf_counter()
+    conduction = Conduction(mesh, problem)
+    march = March(conduction, tolerance=tolerance, steps=steps, first=first)
+    recorder = Recorder(conduction, gauges)
+    start = march.T.copy()
+    recorder.begin(start)
+    frames = _Frames(frame_times)
+    peak, low, peak_time = start.copy(), start.copy(), np.full(conduction.n, march.begin)
+    for step in march:
+        recorder.add(step)
+        for T, t in ((step.T0, step.t0), (step.T1, step.t1)):
+            hotter = peak < T
+            peak[hotter], peak_time[hotter] = T[hotter], t
+            np.minimum(low, T, out=low)
+        frames.offer(step)
+        if watch is not None and not watch(step.t1):
+            break
+    times = [march.begin, *(t1 for _, t1 in recorder.times)]
+    breaks = {b.t: b.jump for b in problem.breaks()}
+    stored = float(conduction.heat(march.T).sum() - conduction.heat(start).sum())
+    return Run(
+        mesh, march.outcome, recorder.history(), Steps(np.array(times), breaks), np.array(frames.times),
+        np.array(frames.fields).reshape(-1, conduction.n), peak, low, peak_time, recorder.heat, recorder.made, stored, start,
+        time.perf_counter() - began, march.factorizations, recorder.where_of(),
+    )  # fmt: skip
+
+
+class _Frames:
+    """Keeps fields at wanted times, or thins all step ends to at most `FRAMES` as they come."""
+
+    def __init__(self, wanted: Floats | None) -> None:
+        self._wanted = None if wanted is None else {float(t) for t in wanted}
+        self.times: list[float] = []
+        self.fields: list[Floats] = []
+        self._every, self._count = 1, 0
+
+    def offer(self, step: Step) -> None:
+        if self._wanted is not None:
+            if step.t1 in self._wanted:
+                self._keep(step)
+            return
+        self._count += 1
+        if self._count % self._every == 0:
+            self._keep(step)
+        if len(self.times) > FRAMES:
+            self.times, self.fields, self._every = self.times[1::2], self.fields[1::2], 2 * self._every
+
+    def _keep(self, step: Step) -> None:
+        self.times.append(step.t1)
+        self.fields.append(step.T1)
