@@ -14,7 +14,7 @@ class Ledger:
     made : tuple of (str, float)
         In each region with a source.
     stored, unexplained, turned_over : float
-        `turned_over` is the sum of all heat that went in or out or was made, step by step.
+        `turned_over` is the sum of all heat that went in or out or was made, step by step, or what the nodes exchanged if that is more.
     """
 
     through: tuple[tuple[str, float], ...]

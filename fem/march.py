@@ -15,7 +15,7 @@ from fem.stepping import INSIDE, SDIRK4, Ladder, Steps, Tableau
 Floats = NDArray[np.float64]
 
 NEWTON_ROUNDS = 12
-NEWTON_PART = 1e-5
+NEWTON_PART = 1e-6
 """Newton's remaining error as a part of the step tolerance: small enough for the heat ledger to close to 1e-6 of the heat turned over."""
 SMALLEST_PIECE = 0.1
 """A replayed step on which Newton fails is halved, down to pieces of this part of it."""
@@ -128,7 +128,7 @@ class StageSolver:
         problem = self.problem
         T = T.copy()
         T[problem.held] = problem.held_values(t)
-        last = np.inf
+        last = 0.0
         for _ in range(NEWTON_ROUNDS):
             K, loads = problem.stiffness(t, T), problem.loads(t, T)
             change = self.filter(rhs + dt * (loads.into - K @ T) - problem.heat(T))
@@ -136,14 +136,14 @@ class StageSolver:
             size = float(np.max(np.abs(change), initial=0.0))
             if problem.linear or size == 0.0:
                 return T, problem.heat(T), problem.loads(t, T), K
-            if not np.isfinite(size) or size > 2.0 * last:
+            if not np.isfinite(size) or (last > 0.0 and size > 2.0 * last):
                 return None
-            rate = size / last
-            last = size
-            if rate < 1.0:
+            if last > 0.0 and size < last:  # the first round tells nothing of how fast the error shrinks
+                rate = size / last
                 self.rate = max(self.rate, rate)
                 if size * rate / (1.0 - rate) <= self.tolerance:
                     return T, problem.heat(T), problem.loads(t, T), K
+            last = size
         return None
 
 

@@ -1,20 +1,22 @@
 """One property of a stock: a constant, a table over temperature or a law, with its range of validity and its source."""
 
 from collections.abc import Callable
+from itertools import pairwise
 from typing import Any, Generic, Literal, Self, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import ConfigDict, Field, model_validator
 
-from fem.errors import DocketError
+from fem.errors import DocketError, refusal
 from fem.laws import Law, as_law, constant
+from fem.strict import Strict
 from fem.units import Temperature
 
 Floats = NDArray[np.float64]
 Value = TypeVar("Value")
 
-Kind = Literal[
+SourceKind = Literal[
     "published",
     "published, extended",
     "published, as remembered",
@@ -24,8 +26,8 @@ Kind = Literal[
 ]
 """How far a value can be traced.
 
-published: the source is named and the value was checked against a copy of it (a formula's or table's second carrier).
-published, extended: as published, and carried on past the source's own range, or derived from it, by a rule that the source text states.
+published: the source is named, and the value was checked against a second carrier of it.
+published, extended: as published, but derived from it or carried past its range by a rule that the source text states.
 published, as remembered: the source is named, the value was written from memory of it; look it up before you sign.
 common practice, no source: what the trade uses.
 from memory: typical figures without a traceable source.
@@ -49,93 +51,111 @@ def table_law(T: Floats, values: Floats) -> Law:
     return Law(lambda T, rows=T, values=values: np.interp(T, rows, values), frozenset({"T"}), name="table over T")
 
 
-def read_pasted(text: str) -> list[list[str]]:
-    """Split a table pasted from a spreadsheet: one row a line, cells apart by tab, semicolon or spaces.
+def read_pasted(text: str) -> list[list[str | float]]:
+    """Split a table pasted from a spreadsheet: one row a line, cells apart by a tab, a semicolon or spaces.
+
+    A cell that is a plain number becomes one; any other stays text with its unit.
 
     Raises
     ------
-    ValueError
+    PydanticCustomError
         If a row does not have two cells, or a cell holds a comma: `7,5` could be 7.5 or 75.
     """
-    rows = []
-    for number, line in enumerate(text.splitlines(), start=1):
-        if not line.strip():
-            continue
-        if "," in line:
-            raise ValueError(f"row {number} {line.strip()!r}: use a decimal point, and part the cells by a tab, ';' or spaces")
-        cells = [cell.strip() for cell in (line.split(";") if ";" in line else line.split("\t") if "\t" in line else line.split())]
-        if len(cells) != 2:  # noqa: PLR2004
-            raise ValueError(f"row {number} {line.strip()!r}: a row has two cells, temperature and value, and no heading")
-        rows.append(cells)
-    return rows
+    rows = [_cells(number, line.strip()) for number, line in enumerate(text.splitlines(), start=1) if line.strip()]
+    return [[_number(cell) for cell in row] for row in rows]
 
 
-class Property(BaseModel, Generic[Value]):
+def _cells(number: int, line: str) -> list[str]:
+    allowed = "rows of temperature and value, one row a line, no heading"
+    if "," in line:
+        raise refusal(
+            allowed, f"in row {number} write a decimal point, and part the cells by a tab, ';' or spaces, not a comma"
+        )
+    part = next((mark for mark in (";", "\t") if mark in line), None)
+    cells = [cell.strip() for cell in line.split(part)]
+    if len(cells) != 2:
+        raise refusal(allowed, f"give row {number} two cells; it has {len(cells)}")
+    return cells
+
+
+def _number(cell: str) -> str | float:
+    try:
+        return float(cell)
+    except ValueError:
+        return cell
+
+
+class Property(Strict, Generic[Value]):
     """A property over temperature; exactly one of `value`, `table` and `law` is given.
 
     It may be written as a bare number, as rows, as a pasted table, as a callable or a `Law`, or with its keys.
     """
 
-    model_config = ConfigDict(frozen=True, extra="forbid", arbitrary_types_allowed=True)
+    model_config = ConfigDict(
+        revalidate_instances="never"
+    )  # what was made is SI: a file's units must not touch it again
 
     value: Value | None = Field(None, description="Constant, in the property's unit, above zero.")
     table: tuple[tuple[Temperature, Value], ...] | None = Field(
         None,
-        min_length=2,
-        description="Rows of temperature and value, temperatures increasing; linear between rows, constant beyond the ends.",
+        description="Two or more rows of temperature and value, rising; linear between rows, constant beyond them.",
     )
     law: Law | None = Field(None, description="Python only: a law or callable of T [K] (and x, y [m]), in SI.")
     range: tuple[Temperature, Temperature] | None = Field(
         None, description="Lowest and highest temperature for which the property is meant; by default the table's ends."
     )
     source: str | None = Field(None, description="Where the values come from; by default the stock's source.")
-    kind: Kind | None = Field(None, description="How far the values can be traced; by default the stock's kind.")
+    kind: SourceKind | None = Field(None, description="How far the values can be traced; by default the stock's kind.")
 
-    @model_validator(mode="before")
     @classmethod
-    def _read(cls, data: Any) -> Any:
+    def from_short(cls, data: Any) -> Any:
+        """Return the table of keys that a number, rows, a pasted table, a callable or a law stand for."""
+        if isinstance(data, Property):
+            return data
         if isinstance(data, Law) or callable(data):
             data = {"law": data}
-        elif isinstance(data, np.ndarray):
-            data = {"table": data.tolist()}
-        elif isinstance(data, list | tuple) or (isinstance(data, str) and "\n" in data.strip()):
+        elif isinstance(data, np.ndarray | list | tuple) or (isinstance(data, str) and "\n" in data.strip()):
             data = {"table": data}
-        elif not isinstance(data, dict | BaseModel):
+        elif not isinstance(data, dict):
             data = {"value": data}
-        if isinstance(data, dict):
-            data = dict(data)
-            if isinstance(data.get("table"), str):
-                data["table"] = read_pasted(data["table"])
-            if data.get("law") is not None:
-                data["law"] = _law_of(data["law"])
-        return data
+        return {key: _spread(key, given) for key, given in data.items()}
 
     @model_validator(mode="after")
     def _whole(self) -> Self:
         given = [name for name in ("value", "table", "law") if getattr(self, name) is not None]
         if len(given) != 1:
-            raise ValueError(f"give exactly one of value, table and law; given: {', '.join(given) or 'none'}")
+            raise refusal("exactly one of value, table and law", f"given: {', '.join(given) or 'none'}; keep one")
         if self.range is not None and not self.range[0] < self.range[1]:
-            raise ValueError("the range's first temperature must be below its second")
+            raise refusal("a range from a lower to a higher temperature", "swap or mend the two temperatures")
         if self.table is not None:
-            T = [row[0] for row in self.table]
-            for i, (before, after) in enumerate(zip(T[:-1], T[1:], strict=True), start=2):
-                if not before < after:
-                    raise ValueError(f"row {i} of the table: its temperature must be above that of row {i - 1}; spread a jump over a small span")
+            self._rising([row[0] for row in self.table])
         if self.law is not None:
             self._try_law(self.law)
         return self
 
+    @staticmethod
+    def _rising(T: list[float]) -> None:
+        if len(T) < 2:
+            raise refusal("a table of two rows or more", "add a row, or write the value alone if it is a constant")
+        for row, (before, after) in enumerate(pairwise(T), start=2):
+            if not before < after:
+                raise refusal(
+                    "a table whose temperatures rise from row to row",
+                    f"row {row} is not above row {row - 1}; sort the rows, and spread a jump over a small span",
+                )
+
     def _try_law(self, law: Law) -> None:
         T = np.linspace(*(self.range or TRIAL_T), 5)
         place = np.zeros_like(T)
+        allowed = "a callable of numpy arrays that returns one finite value above zero for each temperature"
         try:
             values = np.broadcast_to(np.asarray(law(T=T, x=place, y=place), dtype=np.float64), T.shape)
         except (TypeError, ValueError) as error:
-            raise ValueError(f"the callable must take numpy arrays and return one value for each temperature: {error}") from error
-        if not np.all(np.isfinite(values) & (values > 0.0)):
-            worst = T[np.argmin(np.where(np.isfinite(values), values, -np.inf))]
-            raise ValueError(f"the callable must be finite and above zero in its range; it is not at {worst:g} K. State a range if it is meant for other temperatures")
+            raise refusal(allowed, f"called with five temperatures it failed: {error}") from error
+        good = np.isfinite(values) & (values > 0.0)
+        if not np.all(good):
+            hint = f"it is not at {T[~good][0]:g} K; state a range if it is meant for other temperatures"
+            raise refusal(allowed, hint)
 
     def to_law(self) -> Law:
         """Return the property as a law of T [K] in SI; a table goes on constant beyond its ends."""
@@ -158,8 +178,19 @@ class Property(BaseModel, Generic[Value]):
         return None if self.table is None else (self.table[0][0], self.table[-1][0])
 
 
+def _spread(key: str, given: Any) -> Any:
+    if key == "table" and isinstance(given, str):
+        return read_pasted(given)
+    if key == "table" and isinstance(given, np.ndarray):
+        return given.tolist()
+    if key == "law" and given is not None:
+        return _law_of(given)
+    return given
+
+
 def _law_of(value: Law | Callable[..., Any]) -> Law:
     try:
         return as_law(value, allowed=("T", "x", "y"))
     except DocketError as error:
-        raise ValueError(str(error)) from error
+        problem = error.problems[0]
+        raise refusal(problem.allowed, problem.hint) from error

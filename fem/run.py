@@ -62,8 +62,8 @@ class Run:
         When the highest was reached, s.
     face_heat, made : (n_faces,), (n_regions,) float
         Heat in through each face and made in each region, J.
-    stored : float
-        Heat stored since the start, J.
+    stored, exchanged : float
+        Heat stored since the start, and the sum of what each node gained or lost, J.
     start : (N,) float
         K.
     seconds : float
@@ -83,6 +83,7 @@ class Run:
     face_heat: Floats
     made: Floats
     stored: float
+    exchanged: float
     start: Floats
     seconds: float
     factorizations: int = 0
@@ -104,7 +105,7 @@ class Recorder:
             self._shares.append(("", np.arange(conduction.n), volume))
         problem = conduction.problem
         self._totals = problem.totals()
-        self._sum = np.array([[float(f.name == name) for f in problem.faces] for name in self._totals]).reshape(len(self._totals), -1)
+        self._sum = np.array([[float(f.name == name) for f in problem.faces] for name in self._totals]).reshape(len(self._totals), len(problem.faces))
         self._faces = [f"{f.name} on {f.edge}" for f in problem.faces]
         self._sources = [name for name, law in zip(regions, problem.source, strict=True) if law is not None]
         self._makes = np.array([law is not None for law in problem.source])
@@ -227,10 +228,11 @@ def run(
             break
     times = [march.begin, *(t1 for _, t1 in recorder.times)]
     breaks = {b.t: b.jump for b in problem.breaks()}
-    stored = float(conduction.heat(march.T).sum() - conduction.heat(start).sum())
+    gained = conduction.heat(march.T) - conduction.heat(start)
     return Run(
         mesh, march.outcome, recorder.history(), Steps(np.array(times), breaks), np.array(frames.times),
-        np.array(frames.fields).reshape(-1, conduction.n), peak, low, peak_time, recorder.heat, recorder.made, stored, start,
+        np.array(frames.fields).reshape(-1, conduction.n), peak, low, peak_time, recorder.heat, recorder.made,
+        float(gained.sum()), float(np.abs(gained).sum()), start,
         time.perf_counter() - began, march.factorizations, recorder.where_of(),
     )  # fmt: skip
 

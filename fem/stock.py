@@ -1,9 +1,10 @@
 """Stock: what a region is made of, and the library of stocks that comes with the program.
 
-The library's files in `stock_data` speak the docket's own form, so that an entry can be copied into a docket and changed there.
+The files in `stock_data` speak the docket's own form, so that an entry can be copied into a docket and changed there.
 """
 
 import difflib
+import itertools
 import tomllib
 from collections.abc import Mapping
 from functools import cache
@@ -13,11 +14,12 @@ from typing import Any, NamedTuple, Self
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import ConfigDict, Field, model_validator
 
-from fem.errors import DocketError
+from fem.errors import DocketError, refusal
 from fem.laws import Law, constant
-from fem.properties import Kind, Property
+from fem.properties import Property, SourceKind
+from fem.strict import Strict
 from fem.units import Conductivity, Density, FileUnits, SpecificHeat, Temperature
 
 Floats = NDArray[np.float64]
@@ -25,13 +27,15 @@ Floats = NDArray[np.float64]
 PROPERTIES = ("conductivity", "density", "specific_heat")
 
 
-class Stock(BaseModel):
+class Stock(Strict):
     """What a region is made of.
 
     Each property is a constant, a table over temperature or, in Python, a law or callable of T [K]; see `Property`.
     """
 
-    model_config = ConfigDict(frozen=True, extra="forbid")
+    model_config = ConfigDict(
+        revalidate_instances="never"
+    )  # what was made is SI: a file's units must not touch it again
 
     name: str = Field("", description="The stock's name; in a docket the key under which it stands.")
     family: str = Field("own", description="The group under which it is listed.")
@@ -40,21 +44,27 @@ class Stock(BaseModel):
     density: Property[Density] = Field(
         description="Density, kg/m3, above zero; of a solid the cold one, because the section does not grow."
     )
-    specific_heat: Property[SpecificHeat] = Field(description="Specific heat at constant pressure, J/(kg K), above zero.")
+    specific_heat: Property[SpecificHeat] = Field(
+        description="Specific heat at constant pressure, J/(kg K), above zero."
+    )
     range: tuple[Temperature, Temperature] | None = Field(
         None, description="Lowest and highest temperature for every property that states no range of its own."
     )
-    source: str | None = Field(None, description="Where the values come from, for every property that states no source of its own.")
-    kind: Kind = Field("stated in the docket", description="How far the values can be traced, where a property does not say.")
+    source: str | None = Field(
+        None, description="Where the values come from, for every property that states no source of its own."
+    )
+    kind: SourceKind = Field(
+        "stated in the docket", description="How far the values can be traced, where a property does not say."
+    )
     note: str = Field("", description="What a user must know: what is left out, where it stops to hold.")
 
     @model_validator(mode="after")
     def _ranges_meet(self) -> Self:
         if self.range is not None and not self.range[0] < self.range[1]:
-            raise ValueError("the range's first temperature must be below its second")
+            raise refusal("a range from a lower to a higher temperature", "swap or mend the two temperatures")
         low, high = self.valid_range
         if not low < high:
-            raise ValueError(f"the ranges of the properties have no temperature in common: {self._ranges_text()}")
+            raise refusal("ranges of the properties that overlap", f"mend the ranges: {self._ranges_text()}")
         return self
 
     def _ranges_text(self) -> str:
@@ -70,7 +80,7 @@ class Stock(BaseModel):
         own = self.properties()[name]
         return own.range or self.range or own.extent()
 
-    def source_of(self, name: str) -> tuple[str, Kind]:
+    def source_of(self, name: str) -> tuple[str, SourceKind]:
         """Return one property's source text and kind."""
         own = self.properties()[name]
         return own.source or self.source or "no source stated", own.kind or self.kind
@@ -101,7 +111,7 @@ class Stock(BaseModel):
         return Law(product, rho.needs | c.needs, name="density times specific heat")
 
 
-class Figures(NamedTuple):
+class StockTable(NamedTuple):
     """A stock's properties at some temperatures; every array has the shape (n,)."""
 
     T: Floats
@@ -116,7 +126,7 @@ class Figures(NamedTuple):
     """m2/s, conductivity over density times specific heat."""
 
 
-def stock_table(stock: Stock, n: int = 9, within: tuple[float, float] | None = None) -> Figures:
+def stock_table(stock: Stock, n: int = 9, within: tuple[float, float] | None = None) -> StockTable:
     """Return the properties at n temperatures evenly over the range of validity.
 
     Parameters
@@ -136,11 +146,14 @@ def stock_table(stock: Stock, n: int = 9, within: tuple[float, float] | None = N
     low, high = within or stock.valid_range
     if not np.isfinite(high):
         raise DocketError.single(
-            f"stock {stock.name!r}, range", "none", "a lowest and a highest temperature", "state the range for which the values hold"
+            f"stock {stock.name!r}, range",
+            "none",
+            "a lowest and a highest temperature",
+            "state the range for which the values hold",
         )
     T = np.linspace(low, high, n)
     k, rho, c = (np.broadcast_to(p.to_law()(T=T), T.shape).astype(np.float64) for p in stock.properties().values())
-    return Figures(T, k, rho, c, k / (rho * c))
+    return StockTable(T, k, rho, c, k / (rho * c))
 
 
 @cache
@@ -172,11 +185,18 @@ def find(text: str) -> list[Stock]:
     words = text.casefold().split()
     scored = []
     for stock in library().values():
-        places = (stock.name, " ".join(stock.aliases), stock.family)
-        ranks = [next((i for i, place in enumerate(places) if word in place.casefold()), None) for word in words]
+        places = [place.casefold() for place in (stock.name, " ".join(stock.aliases), stock.family)]
+        ranks = [_rank(word, places) for word in words]
         if None not in ranks:
             scored.append((sum(rank for rank in ranks if rank is not None), stock))
     return [stock for _, stock in sorted(scored, key=lambda pair: pair[0])]
+
+
+def _rank(word: str, places: list[str]) -> int | None:
+    """Return 0 for a word that begins a word of the first place, more for later places and for hits inside a word."""
+    begins = (i for i, place in enumerate(places) if f" {word}" in f" {place}")
+    inside = (len(places) + i for i, place in enumerate(places) if word in place)
+    return next(itertools.chain(begins, inside), None)
 
 
 def nearest(name: str, n: int = 3) -> list[str]:

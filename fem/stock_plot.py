@@ -1,7 +1,5 @@
 """A stock's property curves as a PNG file."""
 
-import os
-import tempfile
 import textwrap
 from pathlib import Path
 
@@ -11,6 +9,7 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
+from fem.atomic import whole_file
 from fem.properties import Property
 from fem.stock import Stock, stock_table
 from fem.units import celsius
@@ -20,13 +19,17 @@ PANELS = (
     ("density", "density, kg/m³", "#E69F00"),
     ("specific_heat", "specific heat, J/(kg K)", "#009E73"),
 )
-"""Property, axis label and colour; the colours are three of the set of Okabe and Ito (2008), told apart by all readers."""
+"""Property, axis label, colour; the colours are of the set of Okabe and Ito (2008), safe for colour-blind readers."""
 
 POINTS = 400
-WRAP = 46
+WRAP = 54
+MARKS = 30
+"""Rows of a table that are marked on its curve; more would hide it."""
 
 
-def _curve(own: Property[float], low: float, high: float) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.bool_]]:
+def _curve(
+    own: Property[float], low: float, high: float
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.bool_]]:
     """Return temperatures, values and which of them are rows of the table; all rows in range are among them."""
     rows, _ = own.rows()
     T = np.union1d(np.linspace(low, high, POINTS), rows[(rows >= low) & (rows <= high)])
@@ -38,8 +41,8 @@ def _panel(ax: Axes, stock: Stock, name: str, label: str, colour: str) -> None:
     low, high = stock.valid_range
     T, values, is_row = _curve(stock.properties()[name], low, high)
     ax.plot(celsius(T), values, color=colour, linewidth=1.8)
-    if 0 < is_row.sum() <= 30:  # noqa: PLR2004  more marks than this hide the curve
-        ax.plot(celsius(T[is_row]), values[is_row], "o", color=colour, markersize=3.5)
+    if 0 < is_row.sum() <= MARKS:
+        ax.plot(celsius(T[is_row]), values[is_row], "o", color=colour, markersize=3.5, clip_on=False)
     if np.ptp(values) <= 1e-9 * values[0]:
         ax.set_ylim(0.0, 2.0 * values[0])
     else:
@@ -84,18 +87,9 @@ def plot_stock(stock: Stock, path: Path) -> Path:
     for ax, (name, label, colour) in zip(axes, PANELS, strict=True):
         _panel(ax, stock, name, label, colour)
     figure.suptitle(stock.name, x=0.06, ha="left", fontsize=13, fontweight="bold")
-    note = "\n".join(textwrap.wrap(stock.note, 150))
+    note = "\n".join(textwrap.wrap(stock.note, 165))
     figure.text(0.06, 0.905, note, fontsize=8, color="0.25", va="top")
     figure.subplots_adjust(left=0.06, right=0.985, top=0.80, bottom=0.34, wspace=0.24)
-    _save(figure, path)
-    return path
-
-
-def _save(figure: Figure, path: Path) -> None:
-    handle, draft = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.", suffix=".png")
-    os.close(handle)
-    try:
+    with whole_file(path) as draft:
         figure.savefig(draft, format="png")
-        Path(draft).replace(path)
-    finally:
-        Path(draft).unlink(missing_ok=True)
+    return path

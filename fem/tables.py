@@ -55,10 +55,9 @@ def rows(run: Run, grid: Grid, derived: tuple[Derived, ...] = ()) -> tuple[tuple
 
 def figures(study: Study, problem: Problem, derived: tuple[Derived, ...] = ()) -> Figures:
     """Return all series with their bands; a study of one run has none, and says so with infinite bands."""
-    finest = study.finest
     grid = steady_grid() if problem.steady else grid_of(problem, study.levels[0].steps)
-    grid = _reached(grid, min(float(r.history.t1[-1]) for r in study.runs))
-    keys, value = rows(finest, grid, derived)
+    grid = grid.upto(min(float(r.history.t1[-1]) for r in study.runs))
+    keys, value = rows(study.finest, grid, derived)
     if len(study.levels) < 3:
         nothing = np.full(value.shape, np.inf)
         return Figures(keys, grid, value, nothing, nothing, np.full(value.shape, np.nan))
@@ -66,11 +65,6 @@ def figures(study: Study, problem: Problem, derived: tuple[Derived, ...] = ()) -
     space = three_levels(*levels, grid)
     time = np.zeros_like(value)
     if study.timing:
-        time = time_levels(*(rows(r, grid, derived)[1] for r in study.timing), grid).band
+        part, shape = time_levels(*(rows(r, grid, derived)[1] for r in study.timing), grid)
+        value, time = value + shape, part.band
     return Figures(keys, grid, value, space.band, time, space.order)
-
-
-def _reached(grid: Grid, t: float) -> Grid:
-    """Return the part of the grid that every run has reached."""
-    kept = grid.t <= t
-    return Grid(grid.t[kept], grid.side[kept], grid.origin[kept], grid.until[kept], grid.reported[kept])

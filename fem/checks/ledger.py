@@ -18,7 +18,7 @@ def ledger_of(run: Run, faces: tuple[str, ...], regions: tuple[str, ...], source
         rows = [i for i, key in enumerate(run.history.keys) if key.kind == kind]
         total = float(np.abs(run.history.v1[rows] - run.history.v0[rows]).sum())
         moved = max(moved, total) if kind == "stored" else moved + total
-    moved = max(moved, float(np.abs(run.face_heat).sum() + np.abs(run.made).sum()), abs(run.stored))
+    moved = max(moved, float(np.abs(run.face_heat).sum() + np.abs(run.made).sum()), run.exchanged)
     made = tuple((name, float(heat)) for name, heat, has in zip(regions, run.made, sources, strict=True) if has)
     through = tuple((name, float(heat)) for name, heat in zip(faces, run.face_heat, strict=True))
     unexplained = float(run.face_heat.sum() + run.made.sum() - run.stored)

@@ -1,0 +1,217 @@
+"""A record as tables for a terminal. Reads, never solves; every number with its band, or with the words that it has none."""
+
+import math
+from collections.abc import Iterable
+
+from rich import box
+from rich.console import Console, Group, RenderableType
+from rich.padding import Padding
+from rich.table import Table
+from rich.text import Text
+
+from fem.cautions import RESPONSIBILITY, cautions
+from fem.history import Key
+from fem.numbers import Writer, peak_text
+from fem.record import Record
+from fem.verdicts import Call, Verdict
+
+COLOURS = {Call.met: "green", Call.not_met: "red", Call.too_close: "yellow"}
+NO_VERDICT = "no verdict: no band"
+MANY = 100.0
+"""Margins of more bands than this are just called that: what matters is settled."""
+
+
+def show_record(console: Console, record: Record) -> None:
+    """Print all that a user must see of a record."""
+    console.print(Group(*_parts(record)))
+
+
+def _parts(record: Record) -> list[RenderableType]:
+    writer = Writer.of(record)
+    parts = [_head(record), gauges(record, writer), regions(record, writer), limits(record, writer), ledger(record, writer)]
+    parts += [findings(record, writer), standing(record)]
+    return [part for part in parts if part is not None]
+
+
+def _head(record: Record) -> RenderableType:
+    title = Text(record.title or "(no title)", style="bold")
+    cells, steps = record.facts.get("cells"), record.facts.get("steps")
+    size = f", finest run {_last(cells)} cells" if cells else ""
+    size += f" and {_last(steps)} steps" if steps and not record.steady else ""
+    kind = "steady state" if record.steady else f"{len(record.fields.times)} fields kept"
+    made = f"{record.kind} of docket {record.content_hash[:12]}, {kind}{size}, {record.seconds:.1f} s of work"
+    lines = [title, Text(made, style="dim")]
+    if record.kind == "quick look":
+        lines.append(Text("no band (quick look): one run on one mesh, no number here is vouched for", style="yellow"))
+    if record.outcome != "finished":
+        lines.append(Text(f"outcome: {record.outcome}", style="red"))
+    return Group(*lines)
+
+
+def _last(numbers: object) -> str:
+    return f"{numbers[-1]}" if isinstance(numbers, list | tuple) and numbers else f"{numbers}"
+
+
+def plain_table(title: str, *columns: str) -> Table:
+    """Return an empty table in the style of all tables here; its last column takes what width is left."""
+    table = Table(title=title, title_justify="left", title_style="bold", box=box.SIMPLE_HEAD, pad_edge=False)
+    for name in columns:
+        table.add_column(name, overflow="fold")
+    return table
+
+
+# --- temperatures -------------------------------------------------------------------------------------------------------------
+
+
+def gauges(record: Record, writer: Writer) -> RenderableType | None:
+    """Return the table of gauges: highest and lowest with their instants, and the last value."""
+    keys = [key for key in record.figures.keys if key.kind == "gauge"]
+    if not keys:
+        return None
+    if record.steady:
+        return _steady_table("Gauges", record, writer, keys)
+    table = plain_table("Gauges", "gauge", "highest", "at", "lowest", "at", "at the end")
+    for key in keys:
+        high, low = (peak_text(writer, record.figures.peak(key, lowest=lowest)) for lowest in (False, True))
+        table.add_row(key.name, *high, *low, _end(record, writer, key))
+    return table
+
+
+def regions(record: Record, writer: Writer) -> RenderableType | None:
+    """Return the table of regions: the hottest and the coldest that any point of each gets."""
+    names = list(dict.fromkeys(key.name for key in record.figures.keys if key.kind in ("highest", "lowest")))
+    if not names:
+        return None
+    if record.steady:
+        wanted = [key for key in record.figures.keys if key.kind in ("highest", "lowest", "mean")]
+        return _steady_table("Regions", record, writer, wanted)
+    table = plain_table("Regions", "region", "hottest anywhere", "at", "coldest anywhere", "at")
+    for name in names:
+        row = [name or "whole section"]
+        for kind, lowest in (("highest", False), ("lowest", True)):
+            key = Key(kind, name)
+            known = key in record.figures.keys
+            row += peak_text(writer, record.figures.peak(key, lowest=lowest)) if known else ("", "")
+        table.add_row(*row)
+    return table
+
+
+def _steady_table(title: str, record: Record, writer: Writer, keys: Iterable[Key]) -> Table:
+    table = plain_table(title, title.lower().removesuffix("s"), "", "temperature")
+    for key in keys:
+        table.add_row(key.name or "whole section", "" if key.kind == "gauge" else key.kind, _end(record, writer, key))
+    return table
+
+
+def _end(record: Record, writer: Writer, key: Key) -> str:
+    value, band = record.figures.series(key)
+    return writer.value("temperature", float(value[-1]), float(band[-1]))
+
+
+# --- limits -------------------------------------------------------------------------------------------------------------------
+
+
+def limits(record: Record, writer: Writer) -> RenderableType | None:
+    """Return the table of limits: verdict, margin in kelvin and in bands, and when."""
+    if not record.verdicts:
+        return None
+    table = plain_table("Limits", "limit", "verdict", "margin", "in bands", "when")
+    for verdict in record.verdicts:
+        name = Text(verdict.limit)
+        name.append(f"\n{verdict.text}", style="dim")
+        margin = writer.margin(verdict.margin, verdict.band, is_rate=verdict.is_rate)
+        table.add_row(name, call_text(verdict), margin, bands_text(verdict), _when(record, writer, verdict))
+    return table
+
+
+def call_text(verdict: Verdict) -> Text:
+    """Return the verdict in words and colour; without a band there is none."""
+    if not math.isfinite(verdict.band):
+        return Text(NO_VERDICT, style="yellow")
+    return Text(verdict.call.value, style=COLOURS[verdict.call])
+
+
+def bands_text(verdict: Verdict) -> str:
+    """Return the margin in bands."""
+    if not math.isfinite(verdict.band):
+        return ""
+    sign = "-" if verdict.margin < 0 else "+"
+    size = abs(verdict.bands)
+    return f"{sign}{size:.2g}" if size < MANY else f"{sign}over {MANY:.0f}"
+
+
+def _when(record: Record, writer: Writer, verdict: Verdict) -> str:
+    if record.steady:
+        return ""
+    if verdict.crossing is None:
+        return f"tightest at {writer.time(verdict.t)}"
+    if not math.isfinite(verdict.band):
+        return f"reached at {writer.time(verdict.crossing[0])}" if math.isfinite(verdict.crossing[0]) else "not reached"
+    text = writer.crossing(*verdict.crossing)
+    return text if text.startswith("not") else f"reached at {text}"
+
+
+# --- heat ---------------------------------------------------------------------------------------------------------------------
+
+
+def ledger(record: Record, writer: Writer) -> RenderableType:
+    """Return the heat ledger; totals that have a band carry it, the split over edges is that of the finest run."""
+    book = record.ledger
+    table = plain_table("Heat ledger of the finest run", "heat", "amount")
+    for key in record.figures.keys:
+        if key.kind == "heat":
+            table.add_row(f"in through {key.name}, all its edges", _total(record, writer, key))
+    for name, heat in book.through:
+        table.add_row(f"  in through {name}", writer.heat(heat))
+    for name, heat in book.made:
+        table.add_row(f"made in {name}", writer.heat(heat))
+    stored = Key("stored", "")
+    known = stored in record.figures.keys and not record.steady
+    table.add_row("stored", _total(record, writer, stored) if known else writer.heat(book.stored))
+    part = f"{100.0 * book.part:.2g} % of the {writer.heat(book.turned_over)} turned over"
+    table.add_row("unexplained", f"{writer.heat(book.unexplained)}, {part}")
+    return table
+
+
+def _total(record: Record, writer: Writer, key: Key) -> str:
+    value, band = record.figures.series(key)
+    return writer.value("heat", float(value[-1]), float(band[-1]))
+
+
+# --- findings and standing ----------------------------------------------------------------------------------------------------
+
+
+def findings(record: Record, writer: Writer) -> RenderableType | None:
+    """Return what the checks found; those that keep the standing open first."""
+    if not record.findings:
+        return None
+    table = plain_table("Findings", "check", "", "what was found")
+    for finding in sorted(record.findings, key=lambda found: not found.blocks):
+        told = Text(finding.message)
+        if finding.x is not None and finding.y is not None and writer.place(finding.x, finding.y) not in finding.message:
+            told.append(f" At {writer.place(finding.x, finding.y)}.")
+        if finding.close:
+            told.append(f"\nto close it: {finding.close}", style="dim")
+        weight = Text("keeps it open", style="red") if finding.blocks else Text("remark", style="dim")
+        table.add_row(finding.check, weight, told)
+    return table
+
+
+def standing(record: Record) -> RenderableType:
+    """Return the standing with its reasons and what would close each."""
+    style = "bold green" if record.standing == "vouched" else "bold yellow"
+    lines: list[RenderableType] = [Text.assemble(("Standing: ", "bold"), (record.standing, style))]
+    for number, reason in enumerate(record.reasons, start=1):
+        told = Text(f"{number}. {reason.text}")
+        if reason.close:
+            told.append(f"\n   to close it: {reason.close}", style="dim")
+        lines.append(Padding(told, (0, 0, 0, 2)))
+    return Group(*lines)
+
+
+def show_end(console: Console, record: Record, where: str) -> None:
+    """Print where the record lies, who answers for its use, and the cautions that the job calls for."""
+    console.print(f"\nRecord: {where}", markup=False, highlight=False, soft_wrap=True)
+    console.print(RESPONSIBILITY, markup=False, highlight=False)
+    for caution in cautions(record):
+        console.print(caution, style="yellow", markup=False, highlight=False)

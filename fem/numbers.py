@@ -1,0 +1,292 @@
+"""Numbers for people: in the docket's units, rounded to what the band supports, never without it."""
+
+import math
+from dataclasses import dataclass
+from decimal import ROUND_CEILING, ROUND_FLOOR, ROUND_HALF_EVEN, Context, Decimal
+from typing import Any, Self
+
+from fem.figures import Peak
+from fem.history import Key
+from fem.record import Record
+from fem.units import FileUnits, scale_of
+
+BAND_DIGITS = 2
+"""Significant digits of a written band: JCGM 100:2008 (GUM) 7.2.6, which also allows to round it up."""
+FINEST_TEMPERATURE = -3
+"""Decimal place below which no temperature is written: no thermometer of the trade resolves a millikelvin."""
+VALUE_DIGITS = 6
+"""No more significant digits than these are written of any other value, however narrow its band."""
+NO_BAND_DECIMALS = 1
+"""Decimals of a temperature that has no band."""
+NO_BAND_DIGITS = 3
+"""Significant digits of any other value that has no band."""
+
+PREFIXES = ((1.0, ""), (1e3, "k"), (1e6, "M"), (1e9, "G"), (1e12, "T"))
+EXACT = Context(prec=60)
+SAME_INSTANT = 1e-9
+"""Relative width below which a span of time is one instant."""
+GRACE = Decimal("1e-6")
+"""Part of the last digit by which a band may be rounded down: what binary floats leave of a decimal."""
+
+
+def rounded(value: float, band: float, finest: int | None = None) -> tuple[str, str]:
+    """Return value and band as text: two digits of the band, and the interval written holds the whole interval given.
+
+    Parameters
+    ----------
+    value, band : float
+        Finite, in one unit; band not negative.
+    finest : int, optional
+        Decimal place below which nothing is written; by default that of the value's sixth digit. A band below it is
+        written as one unit of that place, never as nothing.
+
+    Examples
+    --------
+    >>> rounded(212.3456, 0.781)
+    ('212.35', '0.79')
+    >>> rounded(1234.5, 127.0)
+    ('1230', '140')
+    >>> rounded(20.0, 0.0, finest=-3)
+    ('20.000', '0.001')
+    """
+    exact, wide = Decimal(value), Decimal(band)
+    if finest is None:
+        finest = max(exact, wide, key=abs).adjusted() - VALUE_DIGITS + 1 if exact or wide else 0
+    place = max(wide.adjusted() - BAND_DIGITS + 1, finest) if wide else finest
+    step = Decimal(1).scaleb(place)
+    short = exact.quantize(step, ROUND_HALF_EVEN, EXACT)
+    # What rounding moved the value by is added to the band, so that nothing inside it falls out.
+    whole = EXACT.add(wide, EXACT.abs(EXACT.subtract(short, exact)))
+    up = EXACT.subtract(whole, EXACT.multiply(step, GRACE)).quantize(step, ROUND_CEILING, EXACT)
+    return f"{short:f}", f"{max(up, step):f}"
+
+
+def digits(value: float, count: int) -> str:
+    """Return a value with so many significant digits, without an exponent.
+
+    Examples
+    --------
+    >>> digits(0.012345, 3), digits(123456.0, 3), digits(0.0, 3)
+    ('0.0123', '123456', '0')
+    """
+    if value == 0.0:
+        return "0"
+    return f"{value:.{max(count - 1 - math.floor(math.log10(abs(value))), 0)}f}"
+
+
+def plain(value: float) -> str:
+    """Return an exact input with at most six significant digits, and every digit before the point.
+
+    Examples
+    --------
+    >>> plain(500.0), plain(1234567.8), plain(0.1)
+    ('500', '1234568', '0.1')
+    """
+    return f"{value:.6g}" if abs(value) < 1e6 else f"{value:.0f}"
+
+
+def span(middle: float, low: float, high: float) -> tuple[str, str, str]:
+    """Return a value and the ends of its range as text, two digits of the range's width, the ends rounded outwards.
+
+    Examples
+    --------
+    >>> span(371.94, 366.12, 380.71)
+    ('372', '366', '381')
+    """
+    place = (Decimal(high) - Decimal(low)).adjusted() - BAND_DIGITS + 1
+    step = Decimal(1).scaleb(place)
+    grace = EXACT.multiply(step, GRACE)
+    start = EXACT.add(Decimal(low), grace).quantize(step, ROUND_FLOOR, EXACT)
+    end = EXACT.subtract(Decimal(high), grace).quantize(step, ROUND_CEILING, EXACT)
+    return f"{Decimal(middle).quantize(step, ROUND_HALF_EVEN, EXACT):f}", f"{start:f}", f"{end:f}"
+
+
+@dataclass(frozen=True)
+class Scale:
+    """How numbers of one kind are written.
+
+    Attributes
+    ----------
+    unit, step_unit : str
+        Of a value, and of a difference of two, as a docket spells them.
+    factor, offset : float
+        SI value = factor * number + offset.
+    """
+
+    unit: str
+    step_unit: str
+    factor: float
+    offset: float = 0.0
+
+    def out(self, value: Any) -> Any:
+        """Return an SI value, number or array, as a number in the unit."""
+        return (value - self.offset) / self.factor
+
+    def step(self, difference: Any) -> Any:
+        """Return an SI difference (a band, a margin), number or array, as a number in the step's unit."""
+        return difference / self.factor
+
+
+KIND_OF = {
+    "gauge": "temperature",
+    "highest": "temperature",
+    "lowest": "temperature",
+    "mean": "temperature",
+    "difference": "temperature difference",
+    "rate": "heating rate",
+    "flow": "flow",
+    "heat": "heat",
+    "made": "heat",
+    "stored": "heat",
+}
+"""What the values of each kind of series are; "flow" and "heat" are W and J, per metre of depth in a planar section."""
+
+TEMPERATURES = ("temperature", "temperature difference")
+
+
+@dataclass(frozen=True)
+class Writer:
+    """Writes the numbers of one job in the units in which its docket speaks.
+
+    Attributes
+    ----------
+    units : FileUnits
+    steady, revolution : bool
+        Of a steady state heat is told as W; in a planar section W and J are per metre of depth.
+    """
+
+    units: FileUnits
+    steady: bool = False
+    revolution: bool = False
+
+    @classmethod
+    def of(cls, record: Record) -> Self:
+        """Return the writer of a record's numbers."""
+        return cls(FileUnits(*record.units), steady=record.steady, revolution=record.revolution)
+
+    def scale(self, kind: str) -> Scale:
+        """Return how numbers of a kind (of `KINDS`, or "flow" or "heat") are written."""
+        if kind in ("flow", "heat"):
+            unit = "W" if kind == "flow" or self.steady else "J"
+            unit += "" if self.revolution else "/m"
+            return Scale(unit, unit, 1.0)
+        unit = self.units.of(kind)
+        factor, offset = scale_of(unit, kind)
+        step = "temperature difference" if kind == "temperature" else kind
+        return Scale(unit, self.units.of(step), float(factor), float(offset))
+
+    def value(self, kind: str, value: float, band: float, *, signed: bool = False) -> str:
+        """Return an SI value with its band, or with the words that it has none."""
+        scale = self.scale(kind)
+        number, wide = float(scale.out(value)), float(scale.step(band))
+        prefix, factor = _prefix(kind, number, wide)
+        number, wide, unit = number / factor, wide / factor, prefix + sign(scale.unit)
+        plus = "+" if signed and number > 0 else ""
+        if not math.isfinite(number):
+            return "no value"
+        if not math.isfinite(wide):
+            plain = f"{number:.{NO_BAND_DECIMALS}f}" if kind in TEMPERATURES else digits(number, NO_BAND_DIGITS)
+            return f"{plus}{plain} {unit}, no band"
+        text, band_text = rounded(number, wide, FINEST_TEMPERATURE if kind in TEMPERATURES else None)
+        return f"{plus}{text} ± {band_text} {unit}"
+
+    def margin(self, margin: float, band: float, *, is_rate: bool) -> str:
+        """Return a limit's margin with its band, in its unit."""
+        return self.value("heating rate" if is_rate else "temperature difference", margin, band, signed=True)
+
+    def heat(self, joule: float) -> str:
+        """Return an entry of the heat ledger, an exact balance of the finest run rather than a value with a band."""
+        scale = self.scale("heat")
+        prefix, factor = _prefix("heat", joule, 0.0)
+        return f"{digits(joule / factor, 5)} {prefix}{scale.unit}"
+
+    def time(self, seconds: float) -> str:
+        """Return a finite instant or duration."""
+        scale = self.scale("time")
+        return f"{float(scale.out(seconds)):.6g} {scale.unit}"
+
+    def time_span(self, middle: float, low: float, high: float) -> str:
+        """Return an instant with the earliest and the latest that its band allows, all finite."""
+        if high - low <= SAME_INSTANT * max(abs(high), abs(low)):
+            return self.time(middle)
+        scale = self.scale("time")
+        text, start, end = span(*(float(scale.out(x)) for x in (middle, low, high)))
+        return f"{text} ({start} to {end}) {scale.unit}"
+
+    def crossing(self, middle: float, low: float, high: float) -> str:
+        """Return when a temperature is reached, the earliest and the latest; infinite means not within the clock."""
+        if math.isfinite(middle) and math.isfinite(low) and math.isfinite(high):
+            return self.time_span(middle, low, high)
+        if not math.isfinite(low):
+            return "not reached within the clock"
+        earliest = f"{self.time(low)} at the earliest"
+        if not math.isfinite(middle):
+            return f"not reached within the clock, though the band allows it: {earliest}"
+        return f"{self.time(middle)}, {earliest}; the band does not make it certain within the clock"
+
+    def length(self, metres: float) -> str:
+        """Return a length."""
+        scale = self.scale("length")
+        return f"{plain(float(scale.out(metres)))} {scale.unit}"
+
+    def place(self, x: float, y: float) -> str:
+        """Return a point of the section."""
+        scale = self.scale("length")
+        return f"({float(scale.out(x)):.5g}, {float(scale.out(y)):.5g}) {scale.unit}"
+
+    def area(self, square_metres: float) -> str:
+        """Return an area of the section."""
+        scale = self.scale("length")
+        return f"{plain(square_metres / scale.factor**2)} {scale.unit}²"
+
+
+def sign(unit: str) -> str:
+    """Return a unit as people write it.
+
+    Examples
+    --------
+    >>> sign("delta_degF/min"), sign("degC")
+    ('°F/min', '°C')
+    """
+    return unit.replace("delta_degF", "°F").replace("degC", "°C").replace("degF", "°F")
+
+
+SERIES = {
+    "gauge": "gauge {}",
+    "highest": "highest in {}",
+    "lowest": "lowest in {}",
+    "mean": "mean of {}",
+    "difference": "difference {}",
+    "rate": "heating rate of {}",
+    "flow": "heat flow in through {}",
+    "heat": "heat in through {}",
+    "made": "heat made in {}",
+    "stored": "heat stored in {}",
+}
+
+
+def series_text(key: Key) -> str:
+    """Return a series in words.
+
+    Examples
+    --------
+    >>> series_text(Key("highest", "")), series_text(Key("heat", "kiln"))
+    ('highest in the section', 'heat in through kiln')
+    """
+    return SERIES[key.kind].format(key.name or "the section")
+
+
+def peak_text(writer: Writer, peak: Peak) -> tuple[str, str]:
+    """Return a highest or lowest temperature and its instant as text; without a band the instant has no range."""
+    value = writer.value("temperature", peak.value, peak.band)
+    when = writer.time_span(peak.t, peak.t_low, peak.t_high) if math.isfinite(peak.band) else writer.time(peak.t)
+    return value, when
+
+
+def _prefix(kind: str, value: float, band: float) -> tuple[str, float]:
+    """Return the decimal prefix that leaves one to three digits before the point; only heat and its flow carry one."""
+    if kind not in ("flow", "heat"):
+        return "", 1.0
+    largest = max((abs(x) for x in (value, band) if math.isfinite(x)), default=0.0)
+    factor, name = next((pair for pair in reversed(PREFIXES) if largest >= pair[0]), PREFIXES[0])
+    return name, factor

@@ -1,0 +1,121 @@
+"""What an outline must be by itself, before it meets the others; every fault is listed."""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from fem.edge import crossings
+from fem.errors import Problem
+from fem.outline import Outline
+from fem.partition import SAME_POINT
+
+AXIS = "a body of revolution has x = r, the distance from its axis: r >= 0"
+
+
+def check_outlines(outlines: Sequence[Outline], size: float, *, revolution: bool) -> list[Problem]:
+    """Return every fault of the outlines by themselves.
+
+    Parameters
+    ----------
+    outlines : sequence of Outline
+    size : float
+        Of the section, m: it says which points are the same.
+    revolution : bool
+        Then x is a radius.
+    """
+    found = _names(outlines)
+    for outline in outlines:
+        faults = _vertices(outline, SAME_POINT * size)
+        if not faults:
+            faults = _crossings(outline, SAME_POINT * size)
+        found += faults
+        if revolution:
+            found += _behind_axis(outline, SAME_POINT * size)
+    return found
+
+
+def _names(outlines: Sequence[Outline]) -> list[Problem]:
+    found = []
+    names = [outline.name for outline in outlines]
+    for name in sorted({n for n in names if names.count(n) > 1}):
+        found.append(Problem(f'section, name "{name}"', f'"{name}"', "a name of its own for each region and void", "rename one of them"))
+    if not any(outline.solid for outline in outlines):
+        found.append(Problem("section", "", "at least one region that is not a void", "draw a region with a stock"))
+    for outline in outlines:
+        for i, edge in enumerate(outline.edges):
+            taken = [f"edge {k + 1}" for k in range(len(outline.edges)) if k != i]
+            if edge.name == "*" or edge.name in taken:
+                what = "any name but * and the number of another edge"
+                found.append(Problem(outline.place(i), f'"{edge.name}"', what, "rename the edge"))
+    return found
+
+
+def _xy(z: complex) -> tuple[float, float]:
+    return float(z.real), float(z.imag)
+
+
+def _vertices(outline: Outline, tolerance: float) -> list[Problem]:
+    n, found = len(outline.vertices), []
+    if not np.isfinite(np.array(outline.vertices, dtype=np.float64)).all():
+        return [Problem(outline.place(), "a coordinate that is not a finite number", "finite coordinates", "mend the coordinate")]
+    arcs = sum(edge.via is not None for edge in outline.edges)
+    if n < 2 or (n == 2 and arcs == 0):
+        allowed = "at least 3 vertices, or 2 when an edge is an arc"
+        xy = outline.vertices[0] if n else None
+        found.append(Problem(outline.place(), f"an outline of {n} {'vertex' if n == 1 else 'vertices'}", allowed, "add vertices", xy=xy))
+        return found
+    for i, edge in enumerate(outline.edges):
+        start, end = complex(*outline.vertices[i]), complex(*outline.vertices[(i + 1) % n])
+        if abs(end - start) <= tolerance:
+            hint = "delete one of its two vertices; a full circle is drawn as two arcs"
+            found.append(Problem(outline.place(i), "an edge of no length", "two ends that are apart", hint, xy=_xy(start)))
+        elif edge.via is not None and outline.made(i) is None:
+            value = f"via point ({edge.via[0]:.6g}, {edge.via[1]:.6g})"
+            hint = "move the point off the straight line, or take it away for a straight edge"
+            found.append(Problem(outline.place(i), value, "a point that lies off the line through both ends", hint, xy=edge.via))
+    return found
+
+
+def _crossings(outline: Outline, tolerance: float) -> list[Problem]:
+    """Return where edges meet besides the vertex that neighbours share."""
+    chain, n, found = outline.chain, len(outline.chain), []
+    for i in range(n):
+        for j in range(i + 1, n):
+            shared = [chain[k].start for k in range(n) if {(k - 1) % n, k} == {i, j}] if n > 2 else [edge.start for edge in chain]
+            for z in crossings(chain[i], chain[j], tolerance):
+                if all(abs(z - s) > 10.0 * tolerance for s in shared) and not _at_vertex(outline, z, tolerance):
+                    found.append(_crossing(outline, "crosses itself", (i, j), z))
+        for k in range(n):
+            z = chain[k].start
+            if k not in (i, (i + 1) % n) and chain[i].distance(np.array([z]))[0] <= tolerance:
+                found.append(_crossing(outline, "touches itself", (i, k), z))
+    if n == 2 and abs(chain[0].middle - chain[1].middle) <= 10.0 * tolerance:
+        found.append(_crossing(outline, "runs back on itself", (0, 1), chain[0].middle))
+    return found
+
+
+def _at_vertex(outline: Outline, z: complex, tolerance: float) -> bool:
+    """True when the spot is a vertex, which then tells that the outline touches itself."""
+    return any(abs(z - edge.start) <= tolerance for edge in outline.chain)
+
+
+def _crossing(outline: Outline, how: str, which: tuple[int, int], z: complex) -> Problem:
+    hint = "move or reorder the vertices; draw a hole as a void of its own"
+    return Problem(outline.place(*which), f"an outline that {how}", "edges that meet only at the vertex they share", hint, xy=_xy(z))
+
+
+def _behind_axis(outline: Outline, tolerance: float) -> list[Problem]:
+    found = []
+    for i, (x, y) in enumerate(outline.vertices):
+        if x < -tolerance:
+            hint = "move the vertex to r >= 0, or mirror the section"
+            found.append(Problem(f"{outline.place()}, vertex {i + 1}", f"r = {x:.6g} m", AXIS, hint, xy=(x, y)))
+    for i in range(len(outline.edges)):
+        edge = outline.made(i)
+        if edge is None or edge.centre is None or min(edge.start.real, edge.end.real) < -tolerance:
+            continue
+        leftmost = edge.centre - edge.radius
+        if leftmost.real < -tolerance and edge.distance(np.array([leftmost]))[0] <= tolerance:
+            hint = "flatten the arc or move it to r >= 0"
+            found.append(Problem(outline.place(i), f"an arc that reaches r = {leftmost.real:.6g} m", AXIS, hint, xy=_xy(leftmost)))
+    return found

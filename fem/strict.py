@@ -1,0 +1,125 @@
+"""The base of every model of a docket: frozen, strict, and helpful about keys that it does not know."""
+
+import difflib
+from collections.abc import Iterable
+from typing import Any, ClassVar, NoReturn
+
+from pydantic import BaseModel, ConfigDict, ModelWrapValidatorHandler, ValidationError, model_validator
+from pydantic_core import InitErrorDetails, PydanticCustomError
+
+from fem.errors import refusal
+
+
+def nearest(word: str, known: Iterable[str]) -> str:
+    """Return the known word that is most like this one, or an empty text when none is.
+
+    Examples
+    --------
+    >>> nearest("conductivty", ["density", "conductivity"])
+    'conductivity'
+    >>> nearest("zzz", ["density"])
+    ''
+    """
+    folded = {name.casefold(): name for name in known}
+    close = difflib.get_close_matches(str(word).casefold(), folded, n=1, cutoff=0.5)
+    return folded[close[0]] if close else ""
+
+
+def unknown(what: str, word: str, known: Iterable[str]) -> tuple[str, str]:
+    """Return what is allowed, and how to mend it, for a word that is not among the known ones."""
+    known = tuple(dict.fromkeys(known))
+    close = nearest(word, known)
+    return (
+        f"{what} {', '.join(known)}" if known else f"no {what}",
+        f'did you mean "{close}"?' if close else "use one of these",
+    )
+
+
+def tuples(value: Any) -> Any:
+    """Return lists as tuples, all the way down; TOML and people write lists, frozen models hold tuples."""
+    return tuple(tuples(item) for item in value) if isinstance(value, list | tuple) else value
+
+
+def carried(error: Any) -> InitErrorDetails:
+    """Return one line of a validation error so that it can be raised again within another one."""
+    kind = PydanticCustomError(error["type"], "{message}", {"message": error["msg"], **error.get("ctx", {})})
+    return InitErrorDetails(type=kind, loc=error["loc"], input=error["input"])
+
+
+class Strict(BaseModel):
+    """A frozen part of a docket. A field marked `exclude` has no place in a file.
+
+    A field may have an alias: the key under which it stands in a file. Both spellings are accepted, so that the same
+    model is filled by hand in Python and from a file.
+    """
+
+    model_config = ConfigDict(
+        frozen=True,
+        strict=True,
+        extra="forbid",
+        validate_by_name=True,
+        validate_by_alias=True,
+        revalidate_instances="always",
+        arbitrary_types_allowed=True,
+    )
+
+    HINTS: ClassVar[dict[str, str]] = {}
+    """What to say about a key that users are known to try."""
+
+    @classmethod
+    def keys(cls) -> tuple[str, ...]:
+        """Return the keys that a file may use."""
+        return tuple(field.alias or name for name, field in cls.model_fields.items() if not field.exclude)
+
+    @classmethod
+    def from_short(cls, data: Any) -> Any:
+        """Return the table that a short form stands for; a model that has a short form overrides this."""
+        return data
+
+    @classmethod
+    def to_short(cls, table: dict[str, Any]) -> Any:
+        """Return what a file holds for this table; a model that has a short form overrides this."""
+        return table
+
+    @model_validator(mode="wrap")
+    @classmethod
+    def _name_strangers(cls, data: Any, handler: ModelWrapValidatorHandler["Strict"]) -> "Strict":
+        data = cls.from_short(data)
+        if not isinstance(data, dict):
+            return handler(data)
+        known = {*cls.keys(), *cls.model_fields}
+        strangers = [key for key in data if key not in known]
+        whole = {key: tuples(value) for key, value in data.items() if key in known}
+        if not strangers:
+            return handler(whole)
+        lines = []
+        for key in strangers:
+            allowed, hint = unknown("the keys", key, cls.keys())
+            lines.append(InitErrorDetails(type=refusal(allowed, cls.HINTS.get(key, hint)), loc=(key,), input=data[key]))
+        try:
+            handler(whole)
+        except ValidationError as error:
+            lines += [carried(line) for line in error.errors(include_url=False)]
+        raise ValidationError.from_exception_data(cls.__name__, lines)
+
+
+def fault(loc: tuple[int | str, ...], value: Any, allowed: str, hint: str) -> InitErrorDetails:
+    """Return one line of a validation error, for a validator that finds several faults at once."""
+    return InitErrorDetails(type=refusal(allowed, hint), loc=loc, input=value)
+
+
+def raise_one(loc: tuple[int | str, ...], value: Any, allowed: str, hint: str) -> NoReturn:
+    """Raise one fault at a place inside the part that is being read."""
+    raise ValidationError.from_exception_data("docket", [fault(loc, value, allowed, hint)])
+
+
+def raise_all(title: str, faults: list[InitErrorDetails]) -> None:
+    """Raise the faults together, if there are any.
+
+    Raises
+    ------
+    ValidationError
+        That holds them all.
+    """
+    if faults:
+        raise ValidationError.from_exception_data(title, faults)

@@ -1,0 +1,331 @@
+"""The only conversions: what a file or a user writes becomes SI and kelvin here, and nowhere else.
+
+Conversions are exact rational arithmetic rounded once, so ``12 mm`` and ``0.012 m`` are the same float. A bare number
+in a file is in the file's units (validation context); in Python, where there is no file, it is SI and kelvin. Units
+come from pint, whose constants follow BIPM, *The International System of Units*, 9th edition, and NIST SP 811.
+"""
+
+import functools
+import math
+import numbers
+import re
+from dataclasses import dataclass, replace
+from fractions import Fraction
+from typing import Annotated, Any
+
+from pydantic_core import core_schema
+
+from fem.errors import DocketError, refusal, shown
+from fem.kinds import KINDS
+from fem.unit_text import is_unit_text, tidy_unit
+
+LENGTHS = ("mm", "cm", "m", "in")
+TIMES = ("s", "min", "h")
+TEMPERATURES = ("degC", "K", "degF")
+
+
+@dataclass(frozen=True)
+class FileUnits:
+    """The units in which a file speaks; the default is SI and kelvin.
+
+    Attributes
+    ----------
+    length : {"mm", "cm", "m", "in"}
+    time : {"s", "min", "h"}
+    temperature : {"degC", "K", "degF"}
+
+    Raises
+    ------
+    DocketError
+        If one is not among these.
+    """
+
+    length: str = "m"
+    time: str = "s"
+    temperature: str = "K"
+
+    def __post_init__(self) -> None:
+        for name, choices in (("length", LENGTHS), ("time", TIMES), ("temperature", TEMPERATURES)):
+            given = getattr(self, name)
+            tidy = tidy_unit(given) if isinstance(given, str) else given
+            if tidy not in choices:
+                raise DocketError.single(
+                    f"docket, {name}",
+                    shown(given),
+                    ", ".join(choices),
+                    f"write {name} = {choices[0]!r} or another of these",
+                )
+            object.__setattr__(self, name, tidy)
+
+    def of(self, kind: str) -> str:
+        """Return the unit of a bare number of this kind, as pint reads it; a difference never has an offset."""
+        step = {"degC": "K", "K": "K", "degF": "delta_degF"}[self.temperature]
+        own = {
+            "length": self.length,
+            "time": self.time,
+            "temperature": self.temperature,
+            "temperature difference": step,
+            "heating rate": f"{step}/{self.time}",
+        }
+        return own.get(kind, KINDS[kind].si)
+
+
+SI = FileUnits()
+
+
+@dataclass(frozen=True)
+class Reading:
+    """Validation context of a docket: more than its units.
+
+    Attributes
+    ----------
+    units : FileUnits
+        Of bare numbers.
+    kind : str
+        What the values of the schedule are that is being read; empty outside one.
+    logs : object or None
+        Where logs are found (`fem.logs.LogFolder`); None while a part is made on its own in Python.
+    """
+
+    units: FileUnits = SI
+    kind: str = ""
+    logs: Any = None
+
+    def of_kind(self, kind: str) -> "Reading":
+        """Return the same reading inside a schedule of values of this kind."""
+        return replace(self, kind=kind)
+
+
+def reading(context: Any) -> Reading:
+    """Return the context of a validation as a `Reading`; none at all means Python, SI and kelvin."""
+    if isinstance(context, Reading):
+        return context
+    return Reading(units=context if isinstance(context, FileUnits) else SI)
+
+
+@functools.cache
+def _registry() -> Any:
+    import pint  # costs 0.3 s: only a docket that is really read pays for it
+
+    return pint.UnitRegistry(non_int_type=Fraction)
+
+
+@functools.lru_cache(maxsize=512)
+def _scale(unit: str, si: str) -> tuple[Fraction, Fraction]:
+    """Return (factor, offset) with SI value = factor * number + offset, exactly.
+
+    Raises
+    ------
+    ValueError
+        If the unit is unknown or of another dimension.
+    """
+    tidy = tidy_unit(unit)
+    if not is_unit_text(tidy):
+        raise ValueError("not a unit")
+    registry = _registry()
+    try:
+        here, there = registry.parse_units(tidy), registry.parse_units(si)
+        zero = registry.Quantity(Fraction(0), here).to(there).magnitude
+        one = registry.Quantity(Fraction(1), here).to(there).magnitude
+    except Exception as error:  # pint raises a dozen unrelated types for a text that is no unit
+        raise ValueError("unknown, or of another dimension") from error
+    return Fraction(one) - Fraction(zero), Fraction(zero)
+
+
+def scale_of(unit: str, kind: str) -> tuple[Fraction, Fraction]:
+    """Return (factor, offset) of numbers of this kind in this unit: SI value = factor * number + offset, exactly.
+
+    Raises
+    ------
+    ValueError
+        If the unit is unknown or of another dimension.
+    """
+    what = KINDS[kind]
+    if kind == "heat":
+        if unit == what.si:
+            return Fraction(1), Fraction(0)
+        raise ValueError("a plain number")
+    factor, offset = _scale(unit or "dimensionless", what.si or "dimensionless")
+    return factor, offset if what.absolute else Fraction(0)  # "5 degC" as a difference: the scale's zero plays no part
+
+
+def to_si(number: float, unit: str, kind: str) -> float:
+    """Return a number in a unit as SI, correctly rounded; the number means its shortest decimal.
+
+    Raises
+    ------
+    ValueError
+        If the unit is unknown or of another dimension, or the result is too large for a float.
+    """
+    factor, offset = scale_of(unit, kind)
+    try:
+        return float(Fraction(repr(float(number))) * factor + offset)
+    except OverflowError as error:
+        raise ValueError("too large") from error
+
+
+def celsius(kelvin: Any) -> Any:
+    """Return temperatures in K, number or array, as degC, for pictures and printed tables."""
+    return kelvin - 273.15
+
+
+def _is_number(value: Any) -> bool:
+    return isinstance(value, numbers.Real) and not isinstance(value, bool)
+
+
+_NUMBER = re.compile(r"\s*([+-]?(?:\d{1,30}\.?\d{0,30}|\.\d{1,30})(?:[eE][+-]?\d{1,3})?)\s*(.*?)\s*", re.DOTALL)
+
+
+def _parse(text: str, kind: str, units: FileUnits) -> float:
+    """Return a text as SI; without a unit it is a bare number, as pasted from a spreadsheet.
+
+    Raises
+    ------
+    PydanticCustomError
+        With what is allowed and how to mend it.
+    """
+    what = KINDS[kind]
+    allowed = f"a {what.name} as a number or as text with its unit, such as {what.examples}"
+    match = _NUMBER.fullmatch(text)
+    if match is None:
+        comma = re.match(r"\s*[+-]?\d+,\d", text)
+        raise refusal(allowed, "write a decimal point, not a comma" if comma else "write a number, then its unit")
+    number, unit = match.groups()
+    if unit.startswith(","):
+        raise refusal(allowed, "write a decimal point, not a comma")
+    try:
+        factor, offset = scale_of(unit or units.of(kind), kind)
+    except ValueError as error:
+        raise refusal(allowed, f'"{unit}" is not a unit of {what.name} that is known here') from error
+    try:
+        return float(Fraction(number) * factor + offset)
+    except OverflowError as error:
+        raise refusal(allowed, "write a smaller number") from error
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """Marks a pydantic field as a number of one kind: converts to SI, refuses what is not finite or out of bounds.
+
+    Attributes
+    ----------
+    kind : str
+        A key of `KINDS`.
+    lowest, highest : float or None
+        Bounds in SI that replace those of the kind.
+    open_low : bool or None
+        Replaces that of the kind.
+    """
+
+    kind: str
+    lowest: float | None = None
+    highest: float | None = None
+    open_low: bool | None = None
+
+    @property
+    def bounds(self) -> tuple[float, float, bool]:
+        """Lowest and highest value allowed, SI, and whether the lowest itself is refused."""
+        what = KINDS[self.kind]
+        low = what.lowest if self.lowest is None else self.lowest
+        high = what.highest if self.highest is None else self.highest
+        return low, high, what.open_low if self.open_low is None else self.open_low
+
+    def read(self, value: Any, units: FileUnits = SI) -> float:
+        """Return the value in SI.
+
+        Raises
+        ------
+        PydanticCustomError
+            If it is not a finite number or a text with a fitting unit within bounds.
+        """
+        what = KINDS[self.kind]
+        if isinstance(value, str):
+            number = _parse(value, self.kind, units)
+        elif _is_number(value):
+            if not math.isfinite(value):
+                raise refusal(f"a finite {what.name}", "write a number")
+            try:
+                number = float(value) if units is SI else to_si(float(value), units.of(self.kind), self.kind)
+            except (ValueError, OverflowError) as error:
+                raise refusal(self.allowed(units), "write a smaller number") from error
+        else:
+            raise refusal(
+                f"a {what.name}: a number, or text with its unit such as {what.examples}", "write one of these"
+            )
+        low, high, open_low = self.bounds
+        if not (low < number if open_low else low <= number) or number > high:
+            raise refusal(self.allowed(units), "check the number and its unit")
+        return number
+
+    def allowed(self, units: FileUnits = SI) -> str:
+        """Return the bounds as a message states them, in the file's units."""
+        low, high, open_low = self.bounds
+        unit = units.of(self.kind)
+        ends = [f"{in_unit(end, unit, self.kind):.6g}" for end in (low, high)]
+        sign = ">" if open_low else ">="
+        label = unit.removeprefix("delta_")
+        return f"{KINDS[self.kind].name} {sign} {ends[0]} and <= {ends[1]} {label}".rstrip()
+
+    def _validate(self, value: Any, info: core_schema.ValidationInfo) -> float:
+        return self.read(value, reading(info.context).units)
+
+    def __get_pydantic_core_schema__(self, _source: Any, _handler: Any) -> core_schema.CoreSchema:
+        """Tell pydantic to read the field through this mark."""
+        return core_schema.with_info_plain_validator_function(self._validate)
+
+    def json_schema(self) -> dict[str, Any]:
+        """Return the description of a field so marked: unit and bounds."""
+        low, high, open_low = self.bounds
+        bound = "exclusiveMinimum" if open_low else "minimum"
+        return {"type": ["number", "string"], "unit": KINDS[self.kind].si or "-", bound: low, "maximum": high}
+
+    def __get_pydantic_json_schema__(self, _schema: Any, _handler: Any) -> dict[str, Any]:
+        """Describe the field."""
+        return self.json_schema()
+
+
+def in_unit(value: float, unit: str, kind: str) -> float:
+    """Return an SI value as a number in the unit, correctly rounded.
+
+    Raises
+    ------
+    ValueError
+        If the unit is not one of this kind.
+    """
+    factor, offset = scale_of(unit, kind)
+    return float((Fraction(float(value)) - offset) / factor)
+
+
+def written(value: float, kind: str, units: FileUnits) -> float | int | str:
+    """Return an SI value as a file states it: the shortest decimal in the file's units that reads back to it exactly.
+
+    Where no such decimal exists (a temperature so low that the offset swallows its digits) it is text with the SI unit.
+    """
+    unit = units.of(kind)
+    factor, offset = scale_of(unit, kind)
+    exact = (Fraction(value) - offset) / factor
+    for digits in range(1, 18):
+        number = float(f"{float(exact):.{digits}g}") if digits < 17 else float(exact)
+        if to_si(number, unit, kind) == value:
+            return int(number) if number.is_integer() and abs(number) < 1e15 else number
+    return f"{value!r} {KINDS[kind].si}"
+
+
+Length = Annotated[float, Quantity("length")]
+PositiveLength = Annotated[float, Quantity("length", 0.0, open_low=True)]
+Time = Annotated[float, Quantity("time")]
+Duration = Annotated[float, Quantity("time", 0.0)]
+PositiveDuration = Annotated[float, Quantity("time", 0.0, open_low=True)]
+Temperature = Annotated[float, Quantity("temperature")]
+TemperatureDifference = Annotated[float, Quantity("temperature difference", open_low=True)]
+Rate = Annotated[float, Quantity("heating rate")]
+Flux = Annotated[float, Quantity("heat flux")]
+FilmCoefficient = Annotated[float, Quantity("film coefficient")]
+VolumePower = Annotated[float, Quantity("heat source")]
+Conductivity = Annotated[float, Quantity("conductivity")]
+Density = Annotated[float, Quantity("density")]
+SpecificHeat = Annotated[float, Quantity("specific heat")]
+Fraction01 = Annotated[float, Quantity("fraction")]
+Number = Annotated[float, Quantity("number")]
+Seconds = Annotated[float, Quantity("seconds")]
+Heat = Annotated[float, Quantity("heat")]

@@ -1,0 +1,118 @@
+"""Numbers for people: the interval written holds the interval computed, and nothing is written bare."""
+
+import math
+from decimal import Decimal
+
+import pytest
+from hypothesis import assume, given
+from hypothesis import strategies as st
+
+from fem.figures import Peak
+from fem.history import Key
+from fem.numbers import Writer, peak_text, rounded, series_text, span
+from fem.units import FileUnits
+
+METRIC = Writer(FileUnits("mm", "min", "degC"))
+IMPERIAL = Writer(FileUnits("in", "h", "degF"))
+finite = st.floats(-1e9, 1e9, allow_nan=False)
+wide = st.floats(1e-9, 1e6)
+
+
+@given(finite, wide)
+def test_written_interval_holds_the_computed_one(value, band):
+    text, band_text = (Decimal(x) for x in rounded(value, band))
+    step = Decimal(1).scaleb(band_text.as_tuple().exponent)
+    grace = step / 10**6  # what binary floats leave of a decimal
+    assert text - band_text <= Decimal(value) - Decimal(band) + grace
+    assert text + band_text >= Decimal(value) + Decimal(band) - grace
+
+
+@given(finite, wide)
+def test_rounding_widens_a_band_by_little(value, band):
+    """Two digits rounded up, plus half a digit of the value: 1.5 units of the second digit, 15 % of a band of 10."""
+    assume(band > 1e-4 * abs(value))  # a narrower one would need a seventh digit of the value
+    assert float(rounded(value, band)[1]) <= 1.15 * band * (1 + 1e-9)
+
+
+@given(finite, wide)
+def test_value_and_band_end_at_the_same_place(value, band):
+    ends = {Decimal(x).as_tuple().exponent if "." in x else 0 for x in rounded(value, band)}
+    assert len(ends) == 1
+
+
+def test_gum_example_of_rounding():
+    """JCGM 100:2008, 7.2.6: u = 10.47 mOhm is rounded up to 11 mOhm."""
+    assert rounded(10057.62, 10.47)[1] == "11"
+
+
+def test_no_band_is_written_as_nothing():
+    assert rounded(20.0, 0.0, -3) == ("20.000", "0.001")
+    assert METRIC.value("temperature", 293.15, 0.0) == "20.000 ± 0.001 °C"
+
+
+@given(st.floats(0, 1e6), st.floats(1e-6, 1e5), st.floats(0, 1))
+def test_written_span_holds_the_computed_one(low, width, part):
+    high = low + width
+    assume(high - low > 1e-9 * high)
+    middle, start, end = (Decimal(x) for x in span(low + part * (high - low), low, high))
+    grace = Decimal(width) / 10**6
+    assert start <= Decimal(low) + grace
+    assert end >= Decimal(high) - grace
+    assert start <= middle <= end
+
+
+@pytest.mark.parametrize(
+    ("writer", "kind", "value", "band", "text"),
+    [
+        (METRIC, "temperature", 373.15, 1.0, "100.0 ± 1.0 °C"),  # SI: 0 °C is 273.15 K, a step of 1 °C one of 1 K
+        (IMPERIAL, "temperature", 373.15, 1.0, "212.0 ± 1.8 °F"),  # 1 K is 1.8 °F exactly
+        (Writer(FileUnits()), "temperature", 373.15, 1.0, "373.1 ± 1.1 K"),
+        (IMPERIAL, "temperature difference", 10.0, 1.0, "18.0 ± 1.8 °F"),
+        (METRIC, "heating rate", 1.0, 0.1, "60.0 ± 6.0 K/min"),
+        (IMPERIAL, "heating rate", 1.0, 0.1, "6480 ± 650 °F/h"),
+        (METRIC, "heat", 12.3456e6, 1.2e4, "12.346 ± 0.013 MJ/m"),
+        (METRIC, "flow", -1500.0, 20.0, "-1.500 ± 0.020 kW/m"),
+        (Writer(FileUnits(), revolution=True), "heat", 1500.0, 20.0, "1.500 ± 0.020 kJ"),
+        (Writer(FileUnits(), steady=True), "heat", 1500.0, 20.0, "1.500 ± 0.020 kW/m"),
+    ],
+)
+def test_value_speaks_the_dockets_units(writer, kind, value, band, text):
+    assert writer.value(kind, value, band) == text
+
+
+@pytest.mark.parametrize("kind", ["temperature", "temperature difference", "heating rate", "heat", "flow"])
+def test_value_without_a_band_says_so(kind):
+    assert METRIC.value(kind, 345.678, math.inf).endswith(", no band")
+    assert METRIC.value(kind, math.nan, 1.0) == "no value"
+
+
+def test_margin_carries_its_sign():
+    assert METRIC.margin(12.0, 1.0, is_rate=False) == "+12.0 ± 1.0 K"
+    assert METRIC.margin(-12.0, 1.0, is_rate=False) == "-12.0 ± 1.0 K"
+    assert METRIC.margin(-0.1, 0.01, is_rate=True) == "-6.00 ± 0.60 K/min"
+
+
+def test_crossing_says_what_is_not_certain():
+    assert METRIC.crossing(600.0, 540.0, 720.0) == "10.0 (9.0 to 12.0) min"
+    assert METRIC.crossing(600.0, 600.0, 600.0) == "10 min"
+    assert "not make it certain" in METRIC.crossing(600.0, 540.0, math.inf)
+    assert METRIC.crossing(math.inf, 540.0, math.inf).startswith("not reached within the clock, though")
+    assert METRIC.crossing(math.inf, math.inf, math.inf) == "not reached within the clock"
+
+
+def test_peak_gives_no_span_without_a_band():
+    assert peak_text(METRIC, Peak(373.15, 1.0, 600.0, 540.0, 720.0)) == ("100.0 ± 1.0 °C", "10.0 (9.0 to 12.0) min")
+    assert peak_text(METRIC, Peak(373.15, math.inf, 600.0, 0.0, 1800.0)) == ("100.0 °C, no band", "10 min")
+
+
+def test_inputs_are_written_whole():
+    assert METRIC.length(0.5) == "500 mm"
+    assert METRIC.area(0.03) == "30000 mm²"
+    assert METRIC.area(3.0) == "3000000 mm²"
+    assert METRIC.place(0.25, -0.1) == "(250, -100) mm"
+
+
+def test_series_has_words_for_every_kind():
+    assert series_text(Key("gauge", "web")) == "gauge web"
+    with pytest.raises(KeyError):
+        series_text(Key("colour", "web"))
