@@ -35,11 +35,9 @@ def _parts(record: Record) -> list[RenderableType]:
 
 def _head(record: Record) -> RenderableType:
     title = Text(record.title or "(no title)", style="bold")
-    cells, steps = record.facts.get("cells"), record.facts.get("steps")
-    size = f", finest run {_last(cells)} cells" if cells else ""
-    size += f" and {_last(steps)} steps" if steps and not record.steady else ""
-    kind = "steady state" if record.steady else f"{len(record.fields.times)} fields kept"
-    made = f"{record.kind} of docket {record.content_hash[:12]}, {kind}{size}, {record.seconds:.1f} s of work"
+    size = f"finest mesh {len(record.mesh.cells)} cells" if record.kind == "vouch" else f"{len(record.mesh.cells)} cells"
+    steady = ", steady state" if record.steady else ""
+    made = f"{record.kind} of docket {record.content_hash[:12]}{steady}, {size}, {record.seconds:.1f} s of work"
     lines = [title, Text(made, style="dim")]
     if record.kind == "quick look":
         lines.append(Text("no band (quick look): one run on one mesh, no number here is vouched for", style="yellow"))
@@ -48,16 +46,17 @@ def _head(record: Record) -> RenderableType:
     return Group(*lines)
 
 
-def _last(numbers: object) -> str:
-    return f"{numbers[-1]}" if isinstance(numbers, list | tuple) and numbers else f"{numbers}"
-
-
-def plain_table(title: str, *columns: str) -> Table:
-    """Return an empty table in the style of all tables here; its last column takes what width is left."""
-    table = Table(title=title, title_justify="left", title_style="bold", box=box.SIMPLE_HEAD, pad_edge=False)
+def plain_table(*columns: str, wrapped: tuple[str, ...] = ()) -> Table:
+    """Return an empty table in the style of all tables here; only the `wrapped` columns may take several lines."""
+    table = Table(box=box.SIMPLE_HEAD, show_edge=False, padding=(0, 1))
     for name in columns:
-        table.add_column(name, overflow="fold")
+        table.add_column(name, overflow="fold", no_wrap=bool(wrapped) and name not in wrapped)
     return table
+
+
+def under(title: str, table: Table) -> RenderableType:
+    """Return a table under its title, set off from what stands above."""
+    return Group("", Text(title, style="bold"), Padding(table, (0, 0, 0, 1)))
 
 
 # --- temperatures -------------------------------------------------------------------------------------------------------------
@@ -70,11 +69,11 @@ def gauges(record: Record, writer: Writer) -> RenderableType | None:
         return None
     if record.steady:
         return _steady_table("Gauges", record, writer, keys)
-    table = plain_table("Gauges", "gauge", "highest", "at", "lowest", "at", "at the end")
+    table = plain_table("gauge", "highest", "at", "lowest", "at", "at the end")
     for key in keys:
         high, low = (peak_text(writer, record.figures.peak(key, lowest=lowest)) for lowest in (False, True))
         table.add_row(key.name, *high, *low, _end(record, writer, key))
-    return table
+    return under("Gauges", table)
 
 
 def regions(record: Record, writer: Writer) -> RenderableType | None:
@@ -85,7 +84,7 @@ def regions(record: Record, writer: Writer) -> RenderableType | None:
     if record.steady:
         wanted = [key for key in record.figures.keys if key.kind in ("highest", "lowest", "mean")]
         return _steady_table("Regions", record, writer, wanted)
-    table = plain_table("Regions", "region", "hottest anywhere", "at", "coldest anywhere", "at")
+    table = plain_table("region", "hottest point", "at", "coldest point", "at")
     for name in names:
         row = [name or "whole section"]
         for kind, lowest in (("highest", False), ("lowest", True)):
@@ -93,14 +92,14 @@ def regions(record: Record, writer: Writer) -> RenderableType | None:
             known = key in record.figures.keys
             row += peak_text(writer, record.figures.peak(key, lowest=lowest)) if known else ("", "")
         table.add_row(*row)
-    return table
+    return under("Regions", table)
 
 
-def _steady_table(title: str, record: Record, writer: Writer, keys: Iterable[Key]) -> Table:
-    table = plain_table(title, title.lower().removesuffix("s"), "", "temperature")
+def _steady_table(title: str, record: Record, writer: Writer, keys: Iterable[Key]) -> RenderableType:
+    table = plain_table(title.lower().removesuffix("s"), "", "temperature")
     for key in keys:
         table.add_row(key.name or "whole section", "" if key.kind == "gauge" else key.kind, _end(record, writer, key))
-    return table
+    return under(title, table)
 
 
 def _end(record: Record, writer: Writer, key: Key) -> str:
@@ -115,13 +114,13 @@ def limits(record: Record, writer: Writer) -> RenderableType | None:
     """Return the table of limits: verdict, margin in kelvin and in bands, and when."""
     if not record.verdicts:
         return None
-    table = plain_table("Limits", "limit", "verdict", "margin", "in bands", "when")
+    table = plain_table("limit", "verdict", "margin", "in bands", "when", wrapped=("limit", "when"))
     for verdict in record.verdicts:
         name = Text(verdict.limit)
         name.append(f"\n{verdict.text}", style="dim")
         margin = writer.margin(verdict.margin, verdict.band, is_rate=verdict.is_rate)
         table.add_row(name, call_text(verdict), margin, bands_text(verdict), _when(record, writer, verdict))
-    return table
+    return under("Limits", table)
 
 
 def call_text(verdict: Verdict) -> Text:
@@ -157,7 +156,7 @@ def _when(record: Record, writer: Writer, verdict: Verdict) -> str:
 def ledger(record: Record, writer: Writer) -> RenderableType:
     """Return the heat ledger; totals that have a band carry it, the split over edges is that of the finest run."""
     book = record.ledger
-    table = plain_table("Heat ledger of the finest run", "heat", "amount")
+    table = plain_table("heat", "amount")
     for key in record.figures.keys:
         if key.kind == "heat":
             table.add_row(f"in through {key.name}, all its edges", _total(record, writer, key))
@@ -170,7 +169,7 @@ def ledger(record: Record, writer: Writer) -> RenderableType:
     table.add_row("stored", _total(record, writer, stored) if known else writer.heat(book.stored))
     part = f"{100.0 * book.part:.2g} % of the {writer.heat(book.turned_over)} turned over"
     table.add_row("unexplained", f"{writer.heat(book.unexplained)}, {part}")
-    return table
+    return under("Heat ledger of the finest run", table)
 
 
 def _total(record: Record, writer: Writer, key: Key) -> str:
@@ -185,22 +184,22 @@ def findings(record: Record, writer: Writer) -> RenderableType | None:
     """Return what the checks found; those that keep the standing open first."""
     if not record.findings:
         return None
-    table = plain_table("Findings", "check", "", "what was found")
+    table = plain_table("check", "", "what was found", wrapped=("what was found",))
     for finding in sorted(record.findings, key=lambda found: not found.blocks):
         told = Text(finding.message)
         if finding.x is not None and finding.y is not None and writer.place(finding.x, finding.y) not in finding.message:
-            told.append(f" At {writer.place(finding.x, finding.y)}.")
+            told.append(f" — at {writer.place(finding.x, finding.y)}")
         if finding.close:
             told.append(f"\nto close it: {finding.close}", style="dim")
         weight = Text("keeps it open", style="red") if finding.blocks else Text("remark", style="dim")
         table.add_row(finding.check, weight, told)
-    return table
+    return under("Findings", table)
 
 
 def standing(record: Record) -> RenderableType:
     """Return the standing with its reasons and what would close each."""
     style = "bold green" if record.standing == "vouched" else "bold yellow"
-    lines: list[RenderableType] = [Text.assemble(("Standing: ", "bold"), (record.standing, style))]
+    lines: list[RenderableType] = ["", Text.assemble(("Standing: ", "bold"), (record.standing, style))]
     for number, reason in enumerate(record.reasons, start=1):
         told = Text(f"{number}. {reason.text}")
         if reason.close:

@@ -5,13 +5,14 @@ from typing import Any, Self
 
 import numpy as np
 from pydantic import Field, model_validator
+from pydantic_core import core_schema
 
 from fem.errors import DocketError
 from fem.laws import Law
 from fem.polyline import polyline
 from fem.schedule_base import Difference, Row, Schedule, Value, order_faults, pasted
-from fem.strict import Strict, fault, raise_all
-from fem.units import Duration, Time
+from fem.strict import Strict, fault, raise_all, raise_one
+from fem.units import Duration, Time, reading, said
 
 DAY = 86400.0
 """s."""
@@ -35,14 +36,22 @@ class Daily(Schedule):
         return {**data, "daily": pasted(data["daily"])} if isinstance(data, dict) and "daily" in data else data
 
     @model_validator(mode="after")
-    def _within_a_day(self) -> Self:
-        faults = order_faults("daily", self.daily)
+    def _within_a_day(self, info: core_schema.ValidationInfo) -> Self:
+        units = reading(info.context).units
+        faults = order_faults("daily", self.daily, units)
         for i, (t, _) in enumerate(self.daily):
             if not 0.0 <= t <= DAY:
-                faults.append(fault(("daily", i, 0), t, "a time of day from 0 h to 24 h", "write the times of one day"))
+                faults.append(
+                    fault(
+                        ("daily", i, 0),
+                        said(t, "time", units),
+                        "a time of day from 0 h to 24 h",
+                        "write the times of one day",
+                    )
+                )
         if sum(t in (0.0, DAY) for t, _ in self.daily) > 2:
             hint = "write the value before midnight at 24 h and the one after it at 0 h"
-            faults.append(fault(("daily",), len(self.daily), "at most two values at midnight", hint))
+            faults.append(fault(("daily",), None, "at most two values at midnight", hint))
         raise_all("daily", faults)
         return self
 
@@ -82,12 +91,10 @@ class DailyWave(Schedule):
     midnight: Time = Field(0.0, description="A clock time at which it is midnight.")
 
     @model_validator(mode="after")
-    def _peak_within_a_day(self) -> Self:
+    def _peak_within_a_day(self, info: core_schema.ValidationInfo) -> Self:
         if self.daily_wave.peak_at > DAY:
-            raise_all(
-                "daily_wave",
-                [fault(("daily_wave", "peak_at"), self.daily_wave.peak_at, "0 h to 24 h", "write a time of day")],
-            )
+            value = said(self.daily_wave.peak_at, "time", reading(info.context).units)
+            raise_one(("daily_wave", "peak_at"), value, "a time of day from 0 h to 24 h", "write a time of day")
         return self
 
     def law(self, begin: float, end: float) -> Law:  # noqa: ARG002 - smooth: no breaks

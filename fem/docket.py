@@ -1,4 +1,4 @@
-"""The docket: all that a job is, as frozen models. Everything inside is SI and kelvin; files are `fem.docket_file`'s."""
+"""The docket: all that a job is, as frozen models. Inside all is SI and kelvin; files are `fem.docket_file`'s."""
 
 from pathlib import Path
 from typing import Any, ClassVar, Self
@@ -8,15 +8,17 @@ from pydantic_core import core_schema
 
 from fem.docket_errors import docket_error
 from fem.docket_exposures import EdgeRef, Exposure, Film, Radiant, Stretch
-from fem.docket_form import changed, to_form
+from fem.docket_form import Form, Writer, arranged, changed
 from fem.docket_limits import Gauge, Limit
-from fem.docket_links import Parts, link_faults
-from fem.docket_section import Name, Region, Section, StartLike, Vertex
+from fem.docket_links import link_faults
+from fem.docket_parts import Parts
+from fem.docket_section import Name, Region, Section, Vertex
+from fem.docket_terms import Allowance, Clock, Start, Variant, Wanted
 from fem.errors import DocketError
 from fem.log_folder import LogFolder
 from fem.stock import Stock, library
 from fem.strict import Strict, fault, raise_all
-from fem.units import SI, FileUnits, Heat, PositiveDuration, Reading, Seconds, TemperatureDifference, Time, reading
+from fem.units import SI, FileUnits, Reading, reading
 
 __all__ = [
     "Allowance",
@@ -37,80 +39,8 @@ __all__ = [
     "Wanted",
 ]
 
-MOST_REPORTS = 100_000
 
-
-class Clock(Strict):
-    """When the job begins and ends, and how often it reports. A steady job has none: in a file ``steady = true``."""
-
-    HINTS: ClassVar[dict[str, str]] = {"steady": "steady = true stands alone: drop it, or drop the rest of the clock"}
-
-    begin: Time = Field(0.0, description="Clock time at the begin.")
-    end: Time = Field(description="Clock time at the end.")
-    report_every: PositiveDuration = Field(description="Time between two rows of the histories that are reported.")
-    instants: tuple[Time, ...] = Field(
-        (), max_length=10_000, description="Further clock times on which the march lands exactly."
-    )
-
-    @model_validator(mode="after")
-    def _forward(self) -> Self:
-        faults = []
-        if not self.begin < self.end:
-            faults.append(
-                fault(("end",), self.end, f"a time after the begin, {self.begin:.6g} s", "let the clock run on")
-            )
-        elif (self.end - self.begin) / self.report_every > MOST_REPORTS:
-            hint = "report less often"
-            faults.append(fault(("report_every",), self.report_every, f"at most {MOST_REPORTS} reports", hint))
-        for i, t in enumerate(self.instants):
-            if not self.begin <= t <= self.end:
-                faults.append(
-                    fault(("instants", i), t, "a time between begin and end", "drop it or let the clock run longer")
-                )
-        raise_all("clock", faults)
-        return self
-
-
-class Start(Strict):
-    """The state at the start; a region may state its own."""
-
-    HINTS: ClassVar[dict[str, str]] = {"regions": 'write start = ... in the region\'s own table, "[[region]]"'}
-
-    everywhere: StartLike | None = Field(None, description="Temperature of all regions that state none of their own.")
-
-
-class Wanted(Strict):
-    """How narrow the bands shall be."""
-
-    gauges: TemperatureDifference = Field(1.0, description="At every gauge that states none of its own.")
-    regions: TemperatureDifference | None = Field(
-        None, description="On the highest and lowest temperature of each region."
-    )
-    heat: Heat | None = Field(
-        None, description="On the heat flow through each exposure: W/m planar, W for a revolution."
-    )
-    stored: Heat | None = Field(None, description="On the stored heat: J/m planar, J for a revolution.")
-
-
-class Allowance(Strict):
-    """What the work may cost."""
-
-    cells: int = Field(
-        100_000, ge=100, le=5_000_000, description="Most cells of the finest mesh.", json_schema_extra={"unit": "cells"}
-    )
-    seconds: Seconds = Field(
-        300.0, description="Longest wall time of the work, in seconds whatever the file's unit of time."
-    )
-
-
-class Variant(Strict):
-    """The docket with some values changed, under a name."""
-
-    name: Name = Field(description="The variant's name.")
-    changes: dict[str, Any] = Field(
-        min_length=1,
-        description='What is changed: path in the file\'s terms ("region.deck.stock") and value as in the file.',
-    )
+LONGEST_TITLE = 200
 
 
 class Docket(Strict):
@@ -124,7 +54,13 @@ class Docket(Strict):
         With every problem of the docket.
     """
 
-    title: str = Field("", max_length=200, description="What the job is, in one line; moves no number.")
+    HINTS: ClassVar[dict[str, str]] = {
+        "clock": "add [clock] with end and report_every, or with steady = true",
+        "section": "add [section] with kind, and [[region]] tables",
+        "void": "write [[region]] with void = true, so that it stands in the order of the regions",
+    }
+
+    title: str = Field("", max_length=LONGEST_TITLE, description="What the job is, in one line; moves no number.")
     units: FileUnits = Field(SI, description="In which its file speaks, and the bare numbers of its variants.")
     section: Section = Field(description="The cross-section.")
     stock: dict[Name, Stock] = Field(
@@ -164,7 +100,7 @@ class Docket(Strict):
 
     @classmethod
     def read(cls, data: dict[str, Any], context: Reading) -> "Docket":
-        """Return the docket of a table in the file's form or in Python's, whose bare numbers are in the context's units.
+        """Return the docket of a table in the file's form or in Python's; bare numbers are in the context's units.
 
         Raises
         ------
@@ -195,7 +131,7 @@ class Docket(Strict):
         context = reading(info.context)
         if context.logs is not None:
             self._logs = context.logs
-        faults = link_faults(Parts.of(self, library()))
+        faults = link_faults(self._parts())
         raise_all("docket", faults)
         for i, variant in enumerate(self.variants):
             try:
@@ -204,6 +140,11 @@ class Docket(Strict):
                 faults += [fault(("variant", i, p.place), p.value, p.allowed, p.hint) for p in error.problems]
         raise_all("docket", faults)
         return self
+
+    @property
+    def logs(self) -> LogFolder:
+        """Where its logs are found."""
+        return self._logs
 
     @property
     def steady(self) -> bool:
@@ -216,8 +157,45 @@ class Docket(Strict):
         return self.stock[name] if name in self.stock else library()[name]
 
     def start_of(self, region: Region) -> Any:
-        """Return the start temperature of a region: number in K, law or callable of x, y; None in a steady docket without."""
+        """Return a region's temperature at the start: K, or a law or callable of x, y; None in a steady docket."""
         return self.start.everywhere if region.start is None else region.start
+
+    def _parts(self) -> Parts:
+        lists: dict[str, tuple[Any, ...]] = {
+            "region": self.section.regions,
+            "exposure": self.exposures,
+            "gauge": self.gauges,
+            "limit": self.limits,
+            "variant": self.variants,
+        }
+        return Parts(
+            regions=tuple(enumerate(self.section.regions)),
+            exposures=tuple(enumerate(self.exposures)),
+            gauges=tuple(enumerate(self.gauges)),
+            limits=tuple(enumerate(self.limits)),
+            names={key: [part.name for part in parts] for key, parts in lists.items()},
+            stocks=frozenset(self.stock),
+            library=library(),
+            clock=self.clock,
+            timed=self.clock is not None,
+            start=self.start.everywhere is not None,
+            units=self.units,
+        )
+
+    def to_form(self, *, live: bool = False) -> Form:
+        """Return the docket in the terms of its file and in its units; reading it back gives the same docket.
+
+        Parameters
+        ----------
+        live : bool
+            Whether laws and callables may stay as they are; a file can't hold them.
+
+        Raises
+        ------
+        DocketError
+            If the docket holds a callable and `live` is False.
+        """
+        return arranged(Writer(self.units, live=live).model(self), self.units)
 
     def variant(self, name: str) -> "Docket":
         """Return the docket with the changes of one of its variants.
@@ -231,9 +209,9 @@ class Docket(Strict):
         if not found:
             known = ", ".join(variant.name for variant in self.variants) or "none"
             raise DocketError.single("variant", f'"{name}"', f"the variants {known}", "use one of these")
-        form = changed(to_form(self, live=True), found[0].changes)
+        form = changed(self.to_form(live=True), found[0].changes)
         del form["docket"], form["variant"]
-        data = {**form, "title": f"{self.title} — {name}".strip(" —"), "units": self.units}
+        data = {**form, "title": f"{self.title} — {name}".strip(" —")[:LONGEST_TITLE], "units": self.units}
         return Docket.read(data, Reading(units=self.units, logs=self._logs))
 
 

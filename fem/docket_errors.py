@@ -43,7 +43,7 @@ def _problem(
     if kind == "refused":
         return Problem(place, found, ctx["allowed"], ctx["hint"])
     if kind == "missing":
-        return Problem(place, "", f"{loc[-1]} is required", _missing_hint(str(loc[-1])))
+        return Problem(place, "", f"{loc[-1]} is required", f"add {loc[-1]}")
     if kind == "extra_forbidden":
         allowed, hint = unknown("the keys", str(loc[-1]), _stock_keys(loc))
         return Problem(place, found, allowed, hint)
@@ -66,17 +66,6 @@ MENDS = {
     "too_short": "add what is missing",
     "too_long": "drop what is too much",
 }
-
-
-def _missing_hint(key: str) -> str:
-    special = {
-        "stock": "add stock = ..., or void = true for a hole",
-        "clock": "add [clock] with end and report_every, or with steady = true",
-        "region": "draw at least one [[region]]",
-        "regions": "draw at least one region",
-        "outside": 'add outside = "hold"',
-    }
-    return special.get(key, f"add {key} = ...")
 
 
 def _stock_keys(loc: tuple[Any, ...]) -> list[str]:

@@ -6,7 +6,7 @@ from pydantic import Field, model_validator
 from pydantic_core import core_schema
 
 from fem.docket_section import DotlessName, Name, Point
-from fem.errors import refusal
+from fem.errors import Said, refusal
 from fem.schedules import Scheduled
 from fem.strict import Strict, fault, raise_all
 
@@ -104,12 +104,14 @@ class Exposure(Strict):
             faults.append(
                 fault(
                     ("on",),
-                    "nothing to face",
+                    Said("nothing"),
                     "held, flux, film or radiant",
                     "add one; an insulated edge needs no exposure",
                 )
             )
         if "held" in given and len(given) > 1:
-            faults.append(fault(("held",), f"held with {', '.join(given[1:])}", "held alone", "drop held or the rest"))
+            faults.append(
+                fault(("held",), Said(f"held with {', '.join(given[1:])}"), "held alone", "drop held or the rest")
+            )
         raise_all("exposure", faults)
         return self

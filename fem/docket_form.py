@@ -2,11 +2,12 @@
 
 import types
 from collections.abc import Mapping
-from typing import TYPE_CHECKING, Annotated, Any, Union, get_args, get_origin
+from typing import Annotated, Any, Union, get_args, get_origin
 
 from pydantic import BaseModel
+from pydantic.fields import FieldInfo
 
-from fem.errors import DocketError, shown
+from fem.errors import DocketError, Problem, shown
 from fem.laws import Law
 from fem.schedule_base import OwnKind
 from fem.schedules import Schedule, Scheduled
@@ -14,8 +15,8 @@ from fem.stock import PROPERTIES
 from fem.strict import Strict, unknown
 from fem.units import FileUnits, Quantity, written
 
-if TYPE_CHECKING:
-    from fem.docket import Docket
+FORMAT = 1
+"""Of the files that are written, and the newest that is read."""
 
 Form = dict[str, Any]
 """A docket in the file's terms: tables, lists, numbers in the file's units, text."""
@@ -40,13 +41,9 @@ class Writer:
         table: Form = {}
         for name, field in type(part).model_fields.items():
             value = getattr(part, name)
-            if (
-                field.exclude
-                or value is None
-                or (not field.is_required() and value == field.get_default(call_default_factory=True))
-            ):
+            if field.exclude or value is None or _stands_at_default(field, value):
                 continue
-            annotation = field.annotation
+            annotation: Any = field.annotation
             for mark in field.metadata:
                 annotation = Annotated[annotation, mark]
             table[field.alias or name] = self.value(value, annotation, kind)
@@ -97,6 +94,10 @@ class Writer:
         return value
 
 
+def _stands_at_default(field: FieldInfo, value: Any) -> bool:
+    return not field.is_required() and bool(value == field.get_default(call_default_factory=True))
+
+
 def _marks(annotation: Any) -> tuple[Any, ...]:
     """Return the marks of an annotation, through any wrapping and through ``| None``."""
     if get_origin(annotation) is Annotated:
@@ -132,39 +133,21 @@ def stock_form(table: Form) -> Form:
     return out
 
 
-def to_form(docket: "Docket", *, live: bool = False) -> Form:
-    """Return a docket in the terms of its file and in its units; reading it back gives the same docket.
+LISTED = ("region", "exposure", "gauge", "limit", "variant")
+"""What a file holds as an array of tables; the rest are tables."""
 
-    Parameters
-    ----------
-    docket : Docket
-    live : bool
-        Whether laws and callables may stay as they are.
 
-    Raises
-    ------
-    DocketError
-        If the docket holds a callable and `live` is False.
-    """
-    writer = Writer(docket.units, live=live)
-    table = writer.model(docket)
-    regions = table["section"].pop("region")
-    head = {"format": 1, "title": docket.title}
-    head |= {"length": docket.units.length, "time": docket.units.time, "temperature": docket.units.temperature}
-    form: Form = {"docket": head, "section": table["section"], "region": regions}
+def arranged(table: Form, units: FileUnits) -> Form:
+    """Return a docket's table in the order of its file, with the header, every part present even when empty."""
+    section = dict(table["section"])
+    head = {"format": FORMAT, "title": table.get("title", "")}
+    head |= {"length": units.length, "time": units.time, "temperature": units.temperature}
+    form: Form = {"docket": head, "section": section, "region": section.pop("region")}
     form["stock"] = {name: stock_form(stock) for name, stock in table.get("stock", {}).items()}
     form["exposure"] = table.get("exposure", [])
     form["clock"] = table.get("clock", {"steady": True})
-    for key, empty in (
-        ("start", {}),
-        ("gauge", []),
-        ("limit", []),
-        ("wanted", {}),
-        ("allowance", {}),
-        ("sources", {}),
-        ("variant", []),
-    ):
-        form[key] = table.get(key, empty)
+    for key in ("start", "gauge", "limit", "wanted", "allowance", "sources", "variant"):
+        form[key] = table.get(key, [] if key in LISTED else {})
     return form
 
 
@@ -184,7 +167,7 @@ def changed(form: Form, changes: Mapping[str, Any]) -> Form:
         With every path that leads nowhere.
     """
     form = _copied(form)
-    problems = []
+    problems: list[Problem] = []
     for path, value in changes.items():
         try:
             _change(form, path, value)
@@ -211,13 +194,7 @@ def _change(form: Form, path: str, value: Any) -> None:
             if isinstance(here, dict) and done == len(words) - 1 and done > 0:
                 here[words[-1]] = value  # a key that was left out: whether it may stand here is judged as in a file
                 return
-            known = (
-                [str(_label(item)) for item in here]
-                if isinstance(here, list)
-                else list(here)
-                if isinstance(here, dict)
-                else []
-            )
+            known = [str(_label(item)) for item in here] if isinstance(here, list) else _keys(here)
             allowed, hint = unknown(f'below "{".".join(words[:done])}":' if done else "the tables", words[done], known)
             raise DocketError.single(path, shown(value), allowed, hint)
         key, count = step
@@ -226,6 +203,10 @@ def _change(form: Form, path: str, value: Any) -> None:
             here[key] = value
             return
         here = here[key]
+
+
+def _keys(here: Any) -> list[str]:
+    return list(here) if isinstance(here, dict) else []
 
 
 def _label(item: Any) -> Any:

@@ -3,10 +3,12 @@
 from typing import Any, Literal, Self
 
 from pydantic import Field, model_validator
+from pydantic_core import core_schema
 
 from fem.docket_section import DotlessName, Name
+from fem.errors import Said
 from fem.strict import Strict, fault, raise_all
-from fem.units import Length, PositiveDuration, Rate, Temperature, TemperatureDifference, Time, celsius
+from fem.units import Length, PositiveDuration, Rate, Temperature, TemperatureDifference, Time, celsius, reading, said
 
 Must = Literal[
     "reach", "stay below", "stay above", "hold above", "heat slower than", "cool slower than", "differ less than"
@@ -45,14 +47,14 @@ class Gauge(Strict):
     @classmethod
     def keys(cls) -> tuple[str, ...]:
         """Return the keys that a file may use."""
-        return tuple(key for key in (*super().keys(), "at") if key not in ("x", "y"))
+        return tuple(key for key in ("at", *super().keys()) if key not in ("x", "y"))
 
     @classmethod
     def from_short(cls, data: Any) -> Any:
         """Read at = [x, y]."""
-        if not isinstance(data, dict) or "at" not in data:
+        if not isinstance(data, dict) or ("at" not in data and {"x", "y"} <= data.keys()):
             return data
-        at = data["at"]
+        at = data.get("at")
         if not isinstance(at, list | tuple) or len(at) != 2:
             raise_all("gauge", [fault(("at",), at, "[x, y]", "write the two coordinates of the gauge")])
         return {**{key: value for key, value in data.items() if key != "at"}, "x": at[0], "y": at[1]}
@@ -84,7 +86,7 @@ class Limit(Strict):
     during: tuple[Time, Time] | None = Field(None, description="Clock times between which the limit is in force.")
 
     @model_validator(mode="after")
-    def _whole(self) -> Self:
+    def _whole(self, info: core_schema.ValidationInfo) -> Self:
         needed = NEEDED[self.must]
         allowed = (*needed, *OPTIONAL.get(self.must, ("during",)))
         faults = []
@@ -93,9 +95,11 @@ class Limit(Strict):
             if key in needed and value is None:
                 faults.append(fault((key,), None, f'{" and ".join(needed)} for "{self.must}"', f"add {key}"))
             if key not in allowed and value is not None:
-                faults.append(fault((key,), value, f'{", ".join(allowed)} for "{self.must}"', f"drop {key}"))
+                faults.append(fault((key,), None, f'{", ".join(allowed)} for "{self.must}"', f"drop {key}"))
         if self.during is not None and not self.during[0] < self.during[1]:
-            faults.append(fault(("during",), list(self.during), "a first time before the second", "swap the two"))
+            units = reading(info.context).units
+            times = Said(" to ".join(said(t, "time", units) for t in self.during))
+            faults.append(fault(("during",), times, "a first time before the second", "swap the two"))
         if self.other is not None and self.other == self.at:
             faults.append(fault(("other",), self.other, "another gauge", "name the gauge to compare with"))
         raise_all("limit", faults)

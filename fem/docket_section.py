@@ -3,11 +3,12 @@
 from typing import Annotated, Any, ClassVar, Literal, Self
 
 from pydantic import AfterValidator, Field, model_validator
+from pydantic_core import core_schema
 
-from fem.errors import refusal
+from fem.errors import Said, refusal
 from fem.schedules import Scheduled
 from fem.strict import Strict, fault, raise_all, raise_one
-from fem.units import Length, PositiveLength
+from fem.units import Length, PositiveLength, reading, said
 
 LONGEST_NAME = 80
 RESERVED = ("anywhere",)
@@ -68,7 +69,7 @@ class Vertex(Strict):
         table = dict(plain.pop()) if len(plain) > 2 and isinstance(plain[-1], dict) else {}
         if not 2 <= len(plain) <= 3:
             allowed = '[x, y], [x, y, "edge"] or [x, y, "edge", { via = [x, y] }]'
-            raise refusal(allowed, "write the corner as one of these")
+            raise_one((), data, allowed, "write the corner as one of these")
         return {**table, **dict(zip(("x", "y", "edge"), plain, strict=False))}
 
     @classmethod
@@ -84,7 +85,7 @@ class Region(Strict):
     Regions are drawn in order: a later one cuts earlier ones where they overlap.
     """
 
-    HINTS: ClassVar[dict[str, str]] = {"material": "write stock"}
+    HINTS: ClassVar[dict[str, str]] = {"stock": "add stock, or void = true for a hole"}
 
     name: DotlessName = Field(description="The region's name.")
     stock: Name | None = Field(
@@ -123,25 +124,30 @@ class Region(Strict):
         return {"name": table["name"], "void": True, **table}
 
     @model_validator(mode="after")
-    def _closed(self) -> Self:
-        faults = []
+    def _closed(self, info: core_schema.ValidationInfo) -> Self:
+        units, faults = reading(info.context).units, []
         if len(self.outline) == 2 and all(vertex.via is None for vertex in self.outline):
-            faults.append(fault(("outline",), len(self.outline), "three corners, or two with an arc", "add a corner"))
+            faults.append(
+                fault(("outline",), Said("two corners and no arc"), "three corners, or two with an arc", "add a corner")
+            )
         after = (*self.outline[1:], self.outline[0])
         for i, (here, there) in enumerate(zip(self.outline, after, strict=True)):
             if (here.x, here.y) == (there.x, there.y):
                 hint = "drop the corner that is given twice (the outline closes by itself)"
-                faults.append(fault(("outline", i), [here.x, here.y], "corners that differ from the next", hint))
+                spot = Said(f"({said(here.x, 'length', units)}, {said(here.y, 'length', units)})")
+                faults.append(fault(("outline", i), spot, "corners that differ from the next", hint))
         if self.stock is None and self.source is not None:
-            faults.append(fault(("source",), "a source", "no source in a void", "give the region a stock"))
+            faults.append(fault(("source",), None, "no source in a void", "give the region a stock"))
         if self.stock is None and self.start is not None:
-            faults.append(fault(("start",), "a start", "no start in a void", "give the region a stock"))
+            faults.append(fault(("start",), None, "no start in a void", "give the region a stock"))
         raise_all("region", faults)
         return self
 
     def edges(self) -> tuple[str, ...]:
         """Return the names of its edges, once each, in order."""
-        return tuple(dict.fromkeys(vertex.edge for vertex in self.outline if vertex.edge is not None))
+        return tuple(
+            dict.fromkeys(corner.edge for corner in self.outline if corner is not None and corner.edge is not None)
+        )
 
 
 class Section(Strict):
@@ -159,16 +165,18 @@ class Section(Strict):
     close_gaps: bool = Field(default=False, description="Whether such gaps are closed (and noted) rather than refused.")
 
     @model_validator(mode="after")
-    def _right_of_the_axis(self) -> Self:
-        faults = []
+    def _right_of_the_axis(self, info: core_schema.ValidationInfo) -> Self:
+        units, faults = reading(info.context).units, []
         if self.kind == "revolution":
             for i, region in enumerate(self.regions):
-                left = [j for j, vertex in enumerate(region.outline) if vertex.x < 0.0]
-                hint = "draw the half of the section on which the radius x is positive"
-                faults += [
-                    fault(("region", i, "outline", j, "x"), region.outline[j].x, "a radius >= 0", hint) for j in left
-                ]
+                for j, vertex in enumerate(region.outline):
+                    if vertex.x < 0.0:
+                        hint = "draw the half of the section on which the radius x is positive"
+                        value = said(vertex.x, "length", units)
+                        faults.append(fault(("region", i, "outline", j, "x"), value, "a radius >= 0", hint))
         if all(region.stock is None for region in self.regions):
-            faults.append(fault(("region",), "voids only", "at least one region of stock", "give a region a stock"))
+            faults.append(
+                fault(("region",), Said("nothing but voids"), "at least one region of stock", "give a region a stock")
+            )
         raise_all("section", faults)
         return self

@@ -42,7 +42,7 @@ class Problem:
         where = ": ".join(part for part in (self.file, self.place) if part)
         found = f" {self.value} is refused." if self.value else ""
         spot = "" if self.xy is None else f" At x = {self.xy[0]:.6g} m, y = {self.xy[1]:.6g} m."
-        return f"{where}:{found} Allowed: {self.allowed}. To mend: {self.hint}.{spot}"
+        return f"{where}:{found} Allowed: {_ended(self.allowed)} To mend: {_ended(self.hint)}{spot}"
 
 
 class HeatvouchError(Exception):
@@ -126,8 +126,18 @@ def refusal(allowed: str, hint: str) -> PydanticCustomError:
     return PydanticCustomError("refused", "allowed: {allowed}; to mend: {hint}", {"allowed": allowed, "hint": hint})
 
 
+def _ended(sentence: str) -> str:
+    return sentence if sentence.endswith((".", "?", "!")) else f"{sentence}."
+
+
+class Said(str):
+    """Words about a value, which a message repeats as they are instead of quoting them."""
+
+    __slots__ = ()
+
+
 def shown(value: Any) -> str:
     """Return a refused value as a message repeats it: short, on one line."""
-    text = repr(value) if not isinstance(value, str) else f'"{value}"'
+    text = str(value) if isinstance(value, Said) else f'"{value}"' if isinstance(value, str) else repr(value)
     text = " ".join(text.split())
     return text if len(text) <= LONGEST_VALUE else text[: LONGEST_VALUE - 1] + "…"

@@ -1,6 +1,5 @@
 """A record's figures as JSON: every number with its band and unit, in the docket's units."""
 
-import json
 import math
 from pathlib import Path
 from typing import Any
@@ -10,6 +9,7 @@ from fem.cautions import RESPONSIBILITY, cautions
 from fem.figures import Peak
 from fem.history import Key
 from fem.numbers import KIND_OF, Writer, series_text
+from fem.plain_json import as_json, json_safe
 from fem.record import Record
 from fem.verdicts import Verdict
 
@@ -75,20 +75,6 @@ def write_figures(record: Record, path: Path) -> Path:
     with whole_file(path) as draft:
         draft.write_text(as_json(figures_of(record)) + "\n", encoding="utf-8")
     return path
-
-
-def as_json(content: Entry) -> str:
-    """Return plain data as strict JSON text."""
-    return json.dumps(json_safe(content), indent=1, ensure_ascii=False, allow_nan=False)
-
-
-def json_safe(value: Any) -> Any:
-    """Return data in which every number without a finite value is null, as strict JSON wants it."""
-    if isinstance(value, float):
-        return value if math.isfinite(value) else None
-    if isinstance(value, dict):
-        return {key: json_safe(item) for key, item in value.items()}
-    return [json_safe(item) for item in value] if isinstance(value, list | tuple) else value
 
 
 def _units(writer: Writer) -> Entry:

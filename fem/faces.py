@@ -89,11 +89,14 @@ class Sector:
     node, owner : int
     angle : float
         Between the tangents, rad; 0 in a cusp.
+    begins : float
+        Direction of its clockwise side, rad.
     """
 
     node: int
     owner: int
     angle: float
+    begins: float
 
 
 def sectors(links: Sequence[Link], nodes: Complexes) -> list[Sector]:
@@ -106,7 +109,7 @@ def sectors(links: Sequence[Link], nodes: Complexes) -> list[Sector]:
             opening = (seen[following] - seen[k]) % (2.0 * np.pi) if len(around) > 1 else 2.0 * np.pi
             bend = (tangent[following] - tangent[k] - opening + np.pi) % (2.0 * np.pi) - np.pi
             owner = links[i].left if forward else links[i].right
-            found.append(Sector(node, owner, float(np.clip(opening + bend, 0.0, 2.0 * np.pi))))
+            found.append(Sector(node, owner, float(np.clip(opening + bend, 0.0, 2.0 * np.pi)), tangent[k]))
     return found
 
 

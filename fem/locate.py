@@ -25,21 +25,36 @@ def interpolation(mesh: Mesh, points: Floats) -> sp.csr_array:
     points = np.asarray(points, dtype=np.float64).reshape(-1, 2)
     if not len(points):
         return sp.csr_array((0, len(mesh.points)))
+    cells, weights, fits = _locate(mesh, points)
+    if not fits.all():
+        x, y = points[np.flatnonzero(~fits)[0]]
+        raise MeshError(f"point ({x:.6g}, {y:.6g}) m lies outside the section")
+    clipped = np.clip(weights, 0.0, None)
+    clipped /= clipped.sum(axis=1, keepdims=True)
+    rows = np.repeat(np.arange(len(points)), 3)
+    return sp.csr_array((clipped.ravel(), (rows, mesh.cells[cells].ravel())), shape=(len(points), len(mesh.points)))
+
+
+def inside(mesh: Mesh, points: Floats) -> NDArray[np.bool_]:
+    """Return which points (n, 2) [m] can be read on the mesh."""
+    points = np.asarray(points, dtype=np.float64).reshape(-1, 2)
+    return _locate(mesh, points)[2] if len(points) else np.zeros(0, dtype=bool)
+
+
+def _locate(mesh: Mesh, points: Floats) -> tuple[NDArray[np.intp], Floats, NDArray[np.bool_]]:
+    """Return the best cell of each point (n,), its barycentric coordinates there (n, 3), and whether it may be read there (n,)."""
     corners = mesh.points[mesh.cells]
     tree = cKDTree(corners.mean(axis=1))
     reach = float(np.max(np.linalg.norm(corners - corners.mean(axis=1)[:, None, :], axis=2)))
-    cells, weights = [], []
+    cells, weights, fits = [], [], []
     for point in points:
         near = np.array(tree.query_ball_point(point, 1.01 * reach + tree.query(point)[0]))
         coordinates = barycentric(corners[near], point)
         best = int(np.argmax(coordinates.min(axis=1)))
-        if coordinates[best].min() < -_allowed(mesh, near[best]):
-            raise MeshError(f"point ({point[0]:.6g}, {point[1]:.6g}) m lies outside the section")
-        clipped = np.clip(coordinates[best], 0.0, None)
         cells.append(near[best])
-        weights.append(clipped / clipped.sum())
-    rows = np.repeat(np.arange(len(points)), 3)
-    return sp.csr_array((np.concatenate(weights), (rows, mesh.cells[cells].ravel())), shape=(len(points), len(mesh.points)))
+        weights.append(coordinates[best])
+        fits.append(coordinates[best].min() >= -_allowed(mesh, near[best]))
+    return np.array(cells, dtype=np.intp), np.array(weights), np.array(fits, dtype=bool)
 
 
 def barycentric(corners: Floats, point: Floats) -> Floats:

@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 from pydantic import Field, model_validator
 from pydantic_core import InitErrorDetails, core_schema
 
-from fem.errors import DocketError, refusal, shown
+from fem.errors import DocketError, Said, refusal, shown
 from fem.kinds import KINDS
 from fem.log_folder import LogFolder
 from fem.logs import Samples, Wanted
@@ -57,13 +57,25 @@ class Log(Knotted):
         object.__setattr__(self, "kind", context.kind)
         self._settle_units(context)
         if self.samples is None and isinstance(context.logs, LogFolder):
-            wanted = Wanted(self.time, self.column, self.time_unit or "s", self.jumps, self.max_gap)
             try:
-                object.__setattr__(self, "samples", context.logs.samples(self.log, wanted))
+                object.__setattr__(self, "samples", context.logs.samples(self.log, self._wanted()))
             except DocketError as error:
-                raise_all("log", [fault((p.place,), p.value, p.allowed, p.hint) for p in error.problems])
+                raise_all("log", [fault((p.place,), Said(p.value), p.allowed, p.hint) for p in error.problems])
         raise_all("log", self._out_of_bounds())
         return self
+
+    def _wanted(self) -> Wanted:
+        return Wanted(self.time, self.column, self.time_unit or "s", self.jumps, self.max_gap)
+
+    def reads(self, logs: LogFolder) -> bool:
+        """Return whether the log found there holds the same numbers as this one.
+
+        Raises
+        ------
+        DocketError
+            If it can't be read.
+        """
+        return logs.samples(self.log, self._wanted()) == self.samples
 
     def _settle_units(self, context: Reading) -> None:
         """Fix the units that were left out, so that the log means the same wherever the docket goes."""

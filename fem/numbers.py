@@ -75,14 +75,14 @@ def digits(value: float, count: int) -> str:
 
 
 def plain(value: float) -> str:
-    """Return an exact input with at most six significant digits, and every digit before the point.
+    """Return a number that is no result (an input, an instant): five significant digits, and every one before the point.
 
     Examples
     --------
-    >>> plain(500.0), plain(1234567.8), plain(0.1)
-    ('500', '1234568', '0.1')
+    >>> plain(500.0), plain(1234567.8), plain(19.166667), plain(0.1)
+    ('500', '1234568', '19.167', '0.1')
     """
-    return f"{value:.6g}" if abs(value) < 1e6 else f"{value:.0f}"
+    return f"{value:.5g}" if abs(value) < 99999.5 else f"{value:.0f}"
 
 
 def span(middle: float, low: float, high: float) -> tuple[str, str, str]:
@@ -198,12 +198,12 @@ class Writer:
         """Return an entry of the heat ledger, an exact balance of the finest run rather than a value with a band."""
         scale = self.scale("heat")
         prefix, factor = _prefix("heat", joule, 0.0)
-        return f"{digits(joule / factor, 5)} {prefix}{scale.unit}"
+        return f"{plain(joule / factor)} {prefix}{scale.unit}"
 
     def time(self, seconds: float) -> str:
         """Return a finite instant or duration."""
         scale = self.scale("time")
-        return f"{float(scale.out(seconds)):.6g} {scale.unit}"
+        return f"{plain(float(scale.out(seconds)))} {scale.unit}"
 
     def time_span(self, middle: float, low: float, high: float) -> str:
         """Return an instant with the earliest and the latest that its band allows, all finite."""
@@ -221,13 +221,18 @@ class Writer:
             return "not reached within the clock"
         earliest = f"{self.time(low)} at the earliest"
         if not math.isfinite(middle):
-            return f"not reached within the clock, though the band allows it: {earliest}"
-        return f"{self.time(middle)}, {earliest}; the band does not make it certain within the clock"
+            return f"not reached within the clock (the band allows it: {earliest})"
+        return f"{self.time(middle)} ({earliest}, not certain within the clock)"
 
     def length(self, metres: float) -> str:
         """Return a length."""
         scale = self.scale("length")
         return f"{plain(float(scale.out(metres)))} {scale.unit}"
+
+    def step(self, kind: str, difference: float) -> str:
+        """Return a difference that is an input, such as a wanted band."""
+        scale = self.scale(kind)
+        return f"{plain(float(scale.step(difference)))} {sign(scale.step_unit)}"
 
     def place(self, x: float, y: float) -> str:
         """Return a point of the section."""

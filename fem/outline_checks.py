@@ -7,7 +7,7 @@ import numpy as np
 from fem.edge import crossings
 from fem.errors import Problem
 from fem.outline import Outline
-from fem.partition import SAME_POINT
+from fem.partition import SAME_POINT, near_pairs
 
 AXIS = "a body of revolution has x = r, the distance from its axis: r >= 0"
 
@@ -79,24 +79,19 @@ def _vertices(outline: Outline, tolerance: float) -> list[Problem]:
 def _crossings(outline: Outline, tolerance: float) -> list[Problem]:
     """Return where edges meet besides the vertex that neighbours share."""
     chain, n, found = outline.chain, len(outline.chain), []
+    vertices = np.array([edge.start for edge in chain])
+    for i, j in near_pairs(chain, tolerance):
+        for z in crossings(chain[i], chain[j], tolerance):
+            # A crossing in a vertex is told below as a touch, unless it is the one that neighbours share.
+            if np.abs(vertices - z).min() > 10.0 * tolerance:
+                found.append(_crossing(outline, "crosses itself", (i, j), z))
     for i in range(n):
-        for j in range(i + 1, n):
-            shared = [chain[k].start for k in range(n) if {(k - 1) % n, k} == {i, j}] if n > 2 else [edge.start for edge in chain]
-            for z in crossings(chain[i], chain[j], tolerance):
-                if all(abs(z - s) > 10.0 * tolerance for s in shared) and not _at_vertex(outline, z, tolerance):
-                    found.append(_crossing(outline, "crosses itself", (i, j), z))
-        for k in range(n):
-            z = chain[k].start
-            if k not in (i, (i + 1) % n) and chain[i].distance(np.array([z]))[0] <= tolerance:
-                found.append(_crossing(outline, "touches itself", (i, k), z))
+        for k in np.flatnonzero(chain[i].distance(vertices) <= tolerance):
+            if k not in (i, (i + 1) % n):
+                found.append(_crossing(outline, "touches itself", (i, int(k)), chain[k].start))
     if n == 2 and abs(chain[0].middle - chain[1].middle) <= 10.0 * tolerance:
         found.append(_crossing(outline, "runs back on itself", (0, 1), chain[0].middle))
     return found
-
-
-def _at_vertex(outline: Outline, z: complex, tolerance: float) -> bool:
-    """True when the spot is a vertex, which then tells that the outline touches itself."""
-    return any(abs(z - edge.start) <= tolerance for edge in outline.chain)
 
 
 def _crossing(outline: Outline, how: str, which: tuple[int, int], z: complex) -> Problem:

@@ -85,7 +85,7 @@ def divide(outlines: Sequence[Outline], points: Sequence[complex], size: float) 
         nodes.add(edge.start)
     for z in points:
         nodes.add(z)
-    for a, b in _near_pairs([edge for _, _, edge in edges], tolerance):
+    for a, b in near_pairs([edge for _, _, edge in edges], tolerance):
         for z in crossings(edges[a][2], edges[b][2], tolerance):
             nodes.add(z)
     z = np.array(nodes.points)
@@ -98,7 +98,7 @@ def divide(outlines: Sequence[Outline], points: Sequence[complex], size: float) 
     return z, found
 
 
-def _near_pairs(edges: Sequence[Edge], tolerance: float) -> list[tuple[int, int]]:
+def near_pairs(edges: Sequence[Edge], tolerance: float) -> list[tuple[int, int]]:
     """Return the pairs of edges whose boxes touch."""
     lo, hi = np.empty((len(edges), 2)), np.empty((len(edges), 2))
     for i, edge in enumerate(edges):

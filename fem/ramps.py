@@ -36,8 +36,8 @@ class Points(Knotted):
         return {**data, "points": pasted(data["points"])} if isinstance(data, dict) and "points" in data else data
 
     @model_validator(mode="after")
-    def _in_order(self) -> Self:
-        raise_all("points", order_faults("points", self.points))
+    def _in_order(self, info: core_schema.ValidationInfo) -> Self:
+        raise_all("points", order_faults("points", self.points, reading(info.context).units))
         return self
 
     def knots(self) -> tuple[Floats, Floats]:
@@ -75,9 +75,9 @@ class FiringPlan(Strict):
         for i, step in enumerate(self.steps):
             if step.rate is not None and kind not in ("temperature", ""):
                 hint = "state how long the ramp takes: over"
-                faults.append(fault(("steps", i, "rate"), step.rate, "a rate for temperatures only", hint))
+                faults.append(fault(("steps", i, "rate"), None, "a rate for temperatures only", hint))
             elif step.rate is not None and step.to == now:
-                faults.append(fault(("steps", i, "to"), step.to, "a value other than the one before", "use { hold }"))
+                faults.append(fault(("steps", i, "to"), None, "a value other than the one before", "use { hold }"))
             now = now if step.to is None else step.to
         raise_all("firing", faults)
         return self

@@ -8,6 +8,8 @@ import numpy as np
 
 from fem.checks.ledger import ledger_of
 from fem.docket import Docket
+from fem.docket_file import to_text
+from fem.docket_hash import content_hash, is_shelvable
 from fem.doubt import map_doubt
 from fem.judge import Judgement, too_wide
 from fem.march import Outcome
@@ -57,8 +59,6 @@ def record_of(
     seconds: float,
 ) -> Record:
     """Return the record of a study."""
-    from fem.docket_file import content_hash, docket_text, is_shelvable  # noqa: PLC0415 - keeps file reading out of the solver's import
-
     finest = study.finest
     reasons = reasons_of(judgement, outcome, kind)
     faces = tuple(f"{face.name} on {face.edge}" for face in problem.faces)
@@ -70,8 +70,8 @@ def record_of(
         created=datetime.now(timezone.utc).isoformat(timespec="seconds"),
         shelvable=is_shelvable(docket),
         versions=versions(),
-        docket_text=docket_text(docket) if is_shelvable(docket) else "",
-        units=docket.units_spoken(),
+        docket_text=to_text(docket) if is_shelvable(docket) else "",
+        units=(docket.units.length, docket.units.time, docket.units.temperature),
         steady=problem.steady,
         revolution=problem.revolution,
         outcome=outcome,

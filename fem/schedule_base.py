@@ -13,7 +13,7 @@ from fem.laws import Law
 from fem.polyline import polyline
 from fem.properties import read_pasted
 from fem.strict import Strict, fault
-from fem.units import Quantity, Time, reading
+from fem.units import FileUnits, Quantity, Time, reading, said
 
 Floats = NDArray[np.float64]
 
@@ -90,6 +90,12 @@ class Knotted(Schedule):
         hold = (self.before == "hold", self.after == "hold")
         return polyline(t, v, hold_before=hold[0], hold_after=hold[1], name=type(self).__name__.lower())
 
+    @classmethod
+    def to_short(cls, table: dict[str, Any]) -> Any:
+        """Return the table with what names the schedule first."""
+        later = ("starts_at", "before", "after")
+        return {k: v for k, v in table.items() if k not in later} | {k: table[k] for k in later if k in table}
+
     def span(self) -> tuple[float, float]:
         """Return the first and the last time, infinite where held."""
         t, _ = self.knots()
@@ -107,15 +113,16 @@ def pasted(value: Any) -> Any:
         raise refusal("rows of time and value", str(error)) from error
 
 
-def order_faults(key: str, rows: tuple[tuple[float, float], ...]) -> list[InitErrorDetails]:
+def order_faults(key: str, rows: tuple[tuple[float, float], ...], units: FileUnits) -> list[InitErrorDetails]:
     """Return the faults in the times of a table: going back, or more than two rows at one time."""
     faults = []
     times = [row[0] for row in rows]
     for i in range(1, len(times)):
+        value = said(times[i], "time", units)
         if times[i] < times[i - 1]:
             allowed, hint = "a time not before that of the row above", "sort the rows by time"
-            faults.append(fault((key, i, 0), times[i], allowed, hint))
+            faults.append(fault((key, i, 0), value, allowed, hint))
         elif i > 1 and times[i] == times[i - 1] == times[i - 2]:
             allowed, hint = "a time at most twice, for a jump", "drop the middle row"
-            faults.append(fault((key, i, 0), times[i], allowed, hint))
+            faults.append(fault((key, i, 0), value, allowed, hint))
     return faults

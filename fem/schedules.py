@@ -23,7 +23,7 @@ from fem.logged import Log
 from fem.ramps import Firing, FiringPlan, FiringStep, Points
 from fem.schedule_base import Schedule, Value, pasted
 from fem.strict import fault, raise_all, unknown
-from fem.units import Quantity, Reading, Temperature, Time, reading
+from fem.units import Quantity, Reading, Temperature, Time, reading, said
 
 __all__ = [
     "Daily",
@@ -76,13 +76,16 @@ class OverTemperature(Schedule):
         return {**data, key: pasted(data[key])} if isinstance(data, dict) and key in data else data
 
     @model_validator(mode="after")
-    def _increasing(self) -> Self:
+    def _increasing(self, info: core_schema.ValidationInfo) -> Self:
+        units = reading(info.context).units
         T = [row[0] for row in self.over_temperature]
         back = [i for i in range(1, len(T)) if T[i] <= T[i - 1]]
-        lines = [
-            fault(("over_temperature", i, 0), T[i], "a temperature above that of the row before", "sort the rows")
-            for i in back
-        ]
+        lines = []
+        for i in back:
+            value = said(T[i], "temperature", units)
+            lines.append(
+                fault(("over_temperature", i, 0), value, "a temperature above that of the row before", "sort the rows")
+            )
         raise_all("over_temperature", lines)
         return self
 

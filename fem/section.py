@@ -13,14 +13,14 @@ from typing import Literal
 import numpy as np
 
 from fem.edge import Complexes, Edge, Floats
-from fem.errors import SectionError
-from fem.faces import Loop, nest, walk
+from fem.errors import Problem, SectionError
+from fem.faces import nest
 from fem.outline import Outline, OutlineEdge, Point, extent
 from fem.outline_checks import check_outlines
-from fem.partition import NOBODY, Link, divide
-from fem.section_checks import check_partition, closed_notes, point_contacts, tangled, thin_voids
+from fem.partition import NOBODY, SAME_POINT, Link, divide
+from fem.section_checks import check_partition, closed_notes, loops_of, narrow_spots, point_contacts, thin_voids
 from fem.snap import close
-from fem.stretches import OutlineStretch, check_stretches, ends_of, on_stretch
+from fem.stretches import OutlineStretch, check_stretches, covers, placed
 
 Kind = Literal["planar", "revolution"]
 GAP_TOLERANCE = 1e-4
@@ -113,6 +113,15 @@ class Plan:
     size: float
     gap_tolerance: float
 
+    def links(self) -> tuple[Complexes, list[Link]]:
+        """Return the points at which curves end, and the curves as links between them (sides are regions)."""
+        numbers: dict[complex, int] = {}
+        links = []
+        for curve in self.curves:
+            a, b = (numbers.setdefault(z, len(numbers)) for z in (curve.edge.start, curve.edge.end))
+            links.append(Link(a, b, curve.edge, [], curve.left, curve.right))
+        return np.array(list(numbers), dtype=np.complex128), links
+
 
 def build_plan(
     outlines: Sequence[Outline],
@@ -141,25 +150,74 @@ def build_plan(
     SectionError
         With every fault found, each with its place.
     """
-    faults = check_outlines(outlines, _size(outlines), revolution=kind == "revolution")
-    if faults:
-        raise SectionError(faults)
+    revolution = kind == "revolution"
+    _refuse(check_outlines(outlines, _rough_size(outlines), revolution=revolution))
     size = extent(outlines)
     tolerance = GAP_TOLERANCE * size if gap_tolerance is None else gap_tolerance
-    faults = thin_voids(outlines, tolerance) + check_stretches(outlines, stretches)
-    if faults:
-        raise SectionError(faults)
-    drawing = _Drawing(outlines, stretches, size, tolerance)
+    _refuse(thin_voids(outlines, size, tolerance) + check_stretches(outlines, stretches, SAME_POINT * size))
+    drawing = _Drawing(outlines, stretches, size)
+    thin, gaps = narrow_spots(drawing.links, drawing.nodes, drawing.nested, tolerance)
     notes: list[str] = []
-    if close_gaps and drawing.gaps():
-        closed = close(outlines, tolerance)
-        faults = check_outlines(closed, size, revolution=kind == "revolution")
-        if faults:
-            raise SectionError(faults)
-        notes = closed_notes(drawing.gaps(), drawing.links, outlines)
-        drawing = _Drawing(closed, stretches, size, tolerance)
-    faults = check_partition(drawing.outlines, drawing.links, drawing.nested, drawing.spots(), tolerance, tried=close_gaps)
+    if close_gaps and gaps:
+        notes = closed_notes(outlines, drawing.links, gaps)
+        outlines = close(outlines, tolerance)
+        _refuse(check_outlines(outlines, size, revolution=revolution))
+        drawing = _Drawing(outlines, stretches, size)
+        thin, gaps = narrow_spots(drawing.links, drawing.nodes, drawing.nested, tolerance)
+    _refuse(check_partition(outlines, drawing.links, drawing.nested, thin + gaps, tolerance, tried=close_gaps))
+    notes += point_contacts(outlines, drawing.links, drawing.nodes)
+    return drawing.plan(kind, tuple(notes), tolerance)
+
+
+def _refuse(faults: list[Problem]) -> None:
     if faults:
         raise SectionError(faults)
-    notes += point_contacts(drawing.links, drawing.nodes, drawing.outlines)
-    return _plan(drawing, kind, tuple(notes))
+
+
+def _rough_size(outlines: Sequence[Outline]) -> float:
+    """Return the diagonal of the vertices' box, m: arcs may still be faulty."""
+    xy = np.array([vertex for outline in outlines for vertex in outline.vertices], dtype=np.float64).reshape(-1, 2)
+    return float(np.hypot(*np.ptp(xy, axis=0))) if len(xy) else 0.0
+
+
+class _Drawing:
+    """The outlines divided into links, and the links walked into faces; links between two parts of one region are left out."""
+
+    def __init__(self, outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], size: float) -> None:
+        self.outlines, self.size = outlines, size
+        self.stretches = [on for on in (placed(outlines, stretch) for stretch in stretches) if on is not None]
+        self.nodes, links = divide(outlines, [z for on in self.stretches for z in on.points], size)
+        for link in links:
+            link.left, link.right = (o if o != NOBODY and outlines[o].solid else NOBODY for o in (link.left, link.right))
+        self.links = [link for link in links if link.left != link.right]
+        self.nested = nest(loops_of(self.links, self.nodes))
+
+    def plan(self, kind: Kind, notes: tuple[str, ...], tolerance: float) -> Plan:
+        """Return the drawing as a plan, in which only solid outlines are numbered."""
+        solids = [o for o, outline in enumerate(self.outlines) if outline.solid]
+        number = {NOBODY: NOBODY} | {o: r for r, o in enumerate(solids)}
+        area = np.zeros(len(solids))
+        for outer, holes in self.nested:
+            area[number[outer.owner]] += outer.area + sum(hole.area for hole in holes)
+        curves = tuple(self._curve(link, number) for link in self.links)
+        faces = tuple(
+            Face(number[outer.owner], (outer.halves, *(hole.halves for hole in holes))) for outer, holes in self.nested
+        )
+        used = {label for curve in curves for label in curve.labels}
+        drawn = {outline.label(i) for outline in self.outlines for i in range(len(outline.edges))}
+        drawn |= {on.label for on in self.stretches}
+        names = tuple(self.outlines[o].name for o in solids)
+        return Plan(kind, names, area, curves, faces, notes, frozenset(drawn - used), self.size, tolerance)
+
+    def _curve(self, link: Link, number: dict[int, int]) -> Curve:
+        edge = link.edge
+        labels = {self.outlines[o].label(i) for o, i in link.origins}
+        for on in self.stretches:
+            mine = [i for o, i in link.origins if o == on.outline]
+            if any(covers(on, self.outlines[on.outline], i, edge.middle) for i in mine):
+                labels.add(on.label)
+        centre = None if edge.centre is None else (edge.centre.real, edge.centre.imag)
+        ends = (edge.start.real, edge.start.imag), (edge.end.real, edge.end.imag)
+        form: Literal["line", "arc"] = "line" if edge.centre is None else "arc"
+        sides = number[link.left], number[link.right]
+        return Curve(frozenset(labels), *sides, form, *ends, centre, edge.radius, edge.length, edge)

@@ -64,7 +64,7 @@ class Strict(BaseModel):
     )
 
     HINTS: ClassVar[dict[str, str]] = {}
-    """What to say about a key that users are known to try."""
+    """How to mend a key that is missing, or one that users are known to try."""
 
     @classmethod
     def keys(cls) -> tuple[str, ...]:
@@ -90,17 +90,27 @@ class Strict(BaseModel):
         known = {*cls.keys(), *cls.model_fields}
         strangers = [key for key in data if key not in known]
         whole = {key: tuples(value) for key, value in data.items() if key in known}
-        if not strangers:
-            return handler(whole)
         lines = []
         for key in strangers:
             allowed, hint = unknown("the keys", key, cls.keys())
             lines.append(InitErrorDetails(type=refusal(allowed, cls.HINTS.get(key, hint)), loc=(key,), input=data[key]))
         try:
-            handler(whole)
+            model = handler(whole)
         except ValidationError as error:
-            lines += [carried(line) for line in error.errors(include_url=False)]
-        raise ValidationError.from_exception_data(cls.__name__, lines)
+            lines += [cls._missing(line) or carried(line) for line in error.errors(include_url=False)]
+        if lines:
+            raise ValidationError.from_exception_data(cls.__name__, lines)
+        return model
+
+    @classmethod
+    def _missing(cls, line: Any) -> InitErrorDetails | None:
+        """Return a fault that says what a missing key of this model is, None for any other fault."""
+        if line["type"] != "missing" or len(line["loc"]) != 1:
+            return None
+        key = str(line["loc"][0])
+        field = next((field for name, field in cls.model_fields.items() if key in (name, field.alias)), None)
+        what = "" if field is None or not field.description else f": {field.description.rstrip('.')}"
+        return InitErrorDetails(type=refusal(f"{key}{what}", cls.HINTS.get(key, f"add {key}")), loc=(key,), input=None)
 
 
 def fault(loc: tuple[int | str, ...], value: Any, allowed: str, hint: str) -> InitErrorDetails:

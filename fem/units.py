@@ -15,7 +15,7 @@ from typing import Annotated, Any
 
 from pydantic_core import core_schema
 
-from fem.errors import DocketError, refusal, shown
+from fem.errors import DocketError, Said, refusal, shown
 from fem.kinds import KINDS
 from fem.unit_text import is_unit_text, tidy_unit
 
@@ -173,6 +173,13 @@ def _is_number(value: Any) -> bool:
     return isinstance(value, numbers.Real) and not isinstance(value, bool)
 
 
+def _finite(value: Any) -> bool:
+    try:
+        return math.isfinite(value)
+    except OverflowError:  # a whole number beyond every float
+        return False
+
+
 _NUMBER = re.compile(r"\s*([+-]?(?:\d{1,30}\.?\d{0,30}|\.\d{1,30})(?:[eE][+-]?\d{1,3})?)\s*(.*?)\s*", re.DOTALL)
 
 
@@ -242,7 +249,7 @@ class Quantity:
         if isinstance(value, str):
             number = _parse(value, self.kind, units)
         elif _is_number(value):
-            if not math.isfinite(value):
+            if not _finite(value):
                 raise refusal(f"a finite {what.name}", "write a number")
             try:
                 number = float(value) if units is SI else to_si(float(value), units.of(self.kind), self.kind)
@@ -296,6 +303,12 @@ def in_unit(value: float, unit: str, kind: str) -> float:
     return float((Fraction(float(value)) - offset) / factor)
 
 
+def said(value: float, kind: str, units: FileUnits = SI) -> Said:
+    """Return an SI value for a message, in the file's units: ``720 min``."""
+    unit = units.of(kind)
+    return Said(f"{in_unit(value, unit, kind):.6g} {unit.removeprefix('delta_')}".rstrip())
+
+
 def written(value: float, kind: str, units: FileUnits) -> float | int | str:
     """Return an SI value as a file states it: the shortest decimal in the file's units that reads back to it exactly.
 
@@ -303,13 +316,17 @@ def written(value: float, kind: str, units: FileUnits) -> float | int | str:
     """
     unit = units.of(kind)
     factor, offset = scale_of(unit, kind)
-    exact = (Fraction(value) - offset) / factor
-    for digits in range(1, 18):
-        number = float(f"{float(exact):.{digits}g}") if digits < 17 else float(exact)
+    exact = float((Fraction(value) - offset) / factor)
+    plain = [f"{exact:.{places}f}" for places in range(7)]  # 0, not -1e-14, for 273.15 K in degC
+    for text in plain + [f"{exact:.{digits}g}" for digits in range(1, 18)]:
+        number = float(text) + 0.0
         if to_si(number, unit, kind) == value:
-            return int(number) if number.is_integer() and abs(number) < 1e15 else number
+            return int(number) if number.is_integer() and abs(number) < LARGEST_INTEGER else number
     return f"{value!r} {KINDS[kind].si}"
 
+
+LARGEST_INTEGER = 1e15
+"""Below it every whole float is written as a whole number."""
 
 Length = Annotated[float, Quantity("length")]
 PositiveLength = Annotated[float, Quantity("length", 0.0, open_low=True)]

@@ -11,8 +11,8 @@ from threadpoolctl import threadpool_limits
 from fem.docket import Docket
 from fem.judge import Judgement, judge
 from fem.march import Outcome
-from fem.mesh import make_mesh
-from fem.pose import Posed, pose
+from fem.mesh import Mesh, make_mesh
+from fem.pose import Posed, check_gauges, pose
 from fem.record import Record, TurnNote
 from fem.recording import record_of
 from fem.study import Bench, Progress, Stopped, Study
@@ -51,7 +51,7 @@ def vouch(docket: Docket, *, on_progress: OnProgress | None = None, on_turn: OnT
         turner = Turner(docket.allowance, began)
         notes: list[TurnNote] = []
         try:
-            study = bench.first(make_mesh(posed.plan, gauges=posed.gauges.points))
+            study = bench.first(_mesh(posed))
         except Stopped as stopped:
             return _unfinished(posed, stopped, began, "vouch")
         outcome = Outcome.finished.value
@@ -81,10 +81,16 @@ def look(docket: Docket, *, on_progress: OnProgress | None = None, stop: Stop | 
         posed = pose(docket)
         bench = _bench(posed, on_progress, stop, began + docket.allowance.seconds)
         try:
-            study = bench.look(make_mesh(posed.plan, gauges=posed.gauges.points))
+            study = bench.look(_mesh(posed))
         except Stopped as stopped:
             return _unfinished(posed, stopped, began, "quick look")
         return _record(posed, study, _judge(posed, study), "quick look", study.finest.outcome.value, (), began)
+
+
+def _mesh(posed: Posed) -> Mesh:
+    mesh = make_mesh(posed.plan, gauges=posed.gauges.points)
+    check_gauges(posed, mesh)
+    return mesh
 
 
 def _bench(posed: Posed, on_progress: OnProgress | None, stop: Stop | None, deadline: float) -> Bench:

@@ -33,6 +33,8 @@ def make_figures() -> Figures:
         origin=np.array([0.0, 0.0, 600.0, 600.0, 600.0]),
         until=np.array([600.0, 600.0, 1800.0, 1800.0, 1800.0]),
         reported=np.array([False, True, False, True, True]),
+        first=np.arange(5),
+        last=np.arange(5),
     )
     value = np.array(
         [

@@ -12,7 +12,8 @@ import pytest
 from fem.cautions import cautions
 from fem.errors import StoreError
 from fem.export import WRITERS, export
-from fem.export_figures import as_json, figures_of
+from fem.export_figures import figures_of
+from fem.plain_json import as_json
 
 
 def read_histories(path):

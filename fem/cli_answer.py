@@ -1,0 +1,97 @@
+"""How a command ends: exit codes, the two consoles, and errors told without a traceback."""
+
+import os
+import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
+from typing import TYPE_CHECKING, Any
+
+import typer
+
+if TYPE_CHECKING:
+    from rich.console import Console
+
+    from fem.errors import Problem
+
+DONE = VOUCHED = 0
+OPEN = 1
+BAD_INPUT = 2
+INTERRUPTED = 3
+BUG = 70
+"""EX_SOFTWARE of BSD's sysexits.h: a fault of ours is never taken for a standing."""
+
+EXIT_CODES = """\b
+Exit codes
+   0  vouched; check, look, export, stock: done
+   1  open (the reasons are told); look: the work did not finish
+   2  bad input, or a file or folder that cannot be read or written
+   3  interrupted by Ctrl-C
+  70  a fault of this program, with its trace"""
+
+PIPE_WIDTH = 120
+"""Characters a line where the output is no terminal and COLUMNS does not say."""
+
+
+def out() -> "Console":
+    """Return the console of results."""
+    return _console(error=False)
+
+
+def err() -> "Console":
+    """Return the console of progress and messages."""
+    return _console(error=True)
+
+
+def _console(*, error: bool) -> "Console":
+    from rich.console import Console  # noqa: PLC0415 - help must not wait for it
+
+    terminal = (sys.stderr if error else sys.stdout).isatty()
+    width = None if terminal or "COLUMNS" in os.environ else PIPE_WIDTH
+    return Console(stderr=error, width=width)
+
+
+def say(text: str) -> None:
+    """Print one message on the error stream, as it is."""
+    err().print(text, markup=False, highlight=False, soft_wrap=True)
+
+
+def put_json(content: dict[str, Any]) -> None:
+    """Print plain data as strict JSON on the output."""
+    from fem.plain_json import as_json  # noqa: PLC0415 - help must not wait for it
+
+    sys.stdout.write(as_json(content) + "\n")
+
+
+@contextmanager
+def answering(*, as_json: bool) -> Iterator[None]:
+    """Turn every error that is not our bug into a message and an exit code."""
+    from fem.errors import DocketError, HeatvouchError  # noqa: PLC0415 - help must not wait for it
+
+    try:
+        yield
+    except DocketError as error:
+        if as_json:
+            put_json({"problems": [vars(problem) for problem in error.problems]})
+        _tell_problems(error.problems)
+        raise typer.Exit(BAD_INPUT) from None
+    except HeatvouchError as error:
+        if as_json:
+            put_json({"error": str(error)})
+        say(str(error))
+        raise typer.Exit(BAD_INPUT) from None
+    except KeyboardInterrupt:
+        say("aborted; nothing of this work was kept")
+        raise typer.Exit(INTERRUPTED) from None
+
+
+def _tell_problems(problems: "tuple[Problem, ...]") -> None:
+    many = len(problems) != 1
+    say(f"{len(problems)} problem{'s' if many else ''}; nothing was computed.")
+    for number, problem in enumerate(problems, start=1):
+        where = ": ".join(part for part in (problem.file, problem.place) if part)
+        say(f"\n{number}. {where}")
+        spot = "" if problem.xy is None else f" at x = {problem.xy[0]:.6g} m, y = {problem.xy[1]:.6g} m"
+        rows = (("found", problem.value + spot), ("allowed", problem.allowed), ("to mend", problem.hint))
+        for name, text in rows:
+            if text:
+                say(f"   {name:8} {text}")

@@ -1,0 +1,175 @@
+"""The work behind `look` and `vouch`: read the docket, find or make its record, keep it, show it."""
+
+import os
+from dataclasses import dataclass
+from importlib.metadata import PackageNotFoundError, version
+from pathlib import Path
+from typing import Any
+
+from fem import store
+from fem.cli_answer import BAD_INPUT, INTERRUPTED, OPEN, VOUCHED, err, out, put_json, say
+from fem.cli_tables import show_end, show_record
+from fem.cli_watch import Watch
+from fem.docket import Docket
+from fem.docket_file import read_docket
+from fem.docket_form import changed
+from fem.docket_hash import content_hash
+from fem.errors import StoreError
+from fem.export_figures import figures_of
+from fem.record import Record
+from fem.units import Reading
+
+QUICK, VOUCH = "quick look", "vouch"
+
+
+@dataclass(frozen=True)
+class Asked:
+    """What the command line says about a docket.
+
+    Attributes
+    ----------
+    docket : Path
+    variant : str or None
+    changes : dict
+        Path in the docket and value, of what the command line changes.
+    again, as_json : bool
+    """
+
+    docket: Path
+    variant: str | None
+    changes: dict[str, Any]
+    again: bool
+    as_json: bool
+
+
+def asked_for(
+    docket: Path,
+    *,
+    variant: str | None = None,
+    band: str | None = None,
+    cells: int | None = None,
+    seconds: float | None = None,
+    again: bool = False,
+    as_json: bool = False,
+) -> Asked:
+    """Return what the options of a command ask for."""
+    given = {"wanted.gauges": _number_or_text(band), "allowance.cells": cells, "allowance.seconds": seconds}
+    changes = {path: value for path, value in given.items() if value is not None}
+    return Asked(docket, variant, changes, again, as_json)
+
+
+def _number_or_text(text: str | None) -> float | str | None:
+    try:
+        return None if text is None else float(text)
+    except ValueError:
+        return text  # with its unit; whether it is one, the docket says
+
+
+def read(asked: Asked) -> Docket:
+    """Return the docket that is meant: its variant, with what the command line changes.
+
+    Raises
+    ------
+    DocketError
+        With every problem.
+    """
+    docket = read_docket(asked.docket)
+    if asked.variant is not None:
+        docket = docket.variant(asked.variant)
+    if not asked.changes:
+        return docket
+    form = changed(docket.to_form(), asked.changes)
+    del form["docket"]
+    data = {**form, "title": docket.title, "units": docket.units}
+    return Docket.read(data, Reading(units=docket.units, logs=docket.logs))
+
+
+def run(asked: Asked, kind: str) -> int:
+    """Answer `look` or `vouch`; return the exit code.
+
+    Raises
+    ------
+    HeatvouchError
+        If the docket is refused, or the shelf cannot be written: before the work, not after it.
+    """
+    docket = read(asked)
+    shelf, digest = store.shelf_of(asked.docket), content_hash(docket)
+    kept = None if asked.again else on_shelf(shelf, digest, kind)
+    if kept is not None:
+        folder, record = kept
+        say(f"read from the shelf, where it lies since {record.created}; --again runs it anew")
+        _show(asked, record, str(folder))
+        return exit_code(record)
+    refuse_unwritable(shelf)
+    record = _work(docket, kind)
+    folder = store.place_on(shelf, digest, kind, record.outcome)
+    try:
+        where = str(store.save(record, folder))
+    except StoreError as error:  # the numbers are shown all the same: they may have cost an hour
+        _show(asked, record, f"not kept: {error}")
+        return BAD_INPUT
+    _show(asked, record, where)
+    return exit_code(record)
+
+
+def on_shelf(shelf: Path, digest: str, kind: str) -> tuple[Path, Record] | None:
+    """Return the record that answers a docket, and its folder; None where there is none or it is damaged, which is told."""
+    try:
+        folder = store.find(shelf, digest, kind)
+        if folder is None:
+            return None
+        record = store.load(folder)
+    except StoreError as error:
+        say(f"the record on the shelf is not used: {error}")
+        return None
+    made_by, this = record.versions.get("heatvouch"), _version()
+    if made_by != this:
+        say(f"the record on the shelf was made by heatvouch {made_by}; this is {this}")
+    return folder, record
+
+
+def _version() -> str:
+    try:
+        return version("heatvouch")
+    except PackageNotFoundError:  # run from a source tree that is not installed
+        return "not installed"
+
+
+def refuse_unwritable(shelf: Path) -> None:
+    """Refuse a shelf that cannot be written, before hours of work go into a record for it.
+
+    Raises
+    ------
+    StoreError
+        If so.
+    """
+    folder = shelf if shelf.exists() else shelf.parent
+    if not folder.is_dir() or not os.access(folder, os.W_OK):
+        raise StoreError(f"records cannot be kept in {shelf}: {folder} is no folder that can be written. Copy the docket to one")
+
+
+def _work(docket: Docket, kind: str) -> Record:
+    from fem.vouch import look, vouch  # noqa: PLC0415 - the solver loads only when there is something to solve
+
+    with Watch(err()) as watch:
+        if kind == QUICK:
+            return look(docket, on_progress=watch.on_progress, stop=watch.stop)
+        return vouch(docket, on_progress=watch.on_progress, on_turn=watch.on_turn, stop=watch.stop)
+
+
+def _show(asked: Asked, record: Record, where: str) -> None:
+    if asked.as_json:
+        put_json({**figures_of(record), "record": where})
+        return
+    console = out()
+    show_record(console, record)
+    show_end(console, record, where)
+
+
+def exit_code(record: Record) -> int:
+    """Return the exit code that a record stands for."""
+    if record.outcome == store.INTERRUPTED:
+        return INTERRUPTED
+    if record.kind == QUICK:
+        return VOUCHED if record.outcome == "finished" else OPEN
+    return VOUCHED if record.standing == "vouched" else OPEN
