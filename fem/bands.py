@@ -21,6 +21,9 @@ Ints = NDArray[np.int_]
 
 SAFETY = 1.25
 ORDER_LOW, ORDER_HIGH = 0.5, 1.5
+NARROWEST = 0.02
+"""No band is stated narrower than this part of the one asked for, no limit is chased below it: at a fiftieth of what matters to the
+user, effects that no mesh or step shows (tables read between their rows, the place of a gauge on an edge) are no longer small."""
 ASYMPTOTIC = 1.2
 """Below this observed order a number is called not asymptotic."""
 

@@ -1,8 +1,9 @@
-"""The commands. Each only reads its options; the work is done in `fem.cli_run`, `fem.cli_check`, `fem.cli_export`, `fem.cli_stock`.
+"""The commands. Each only reads its options; the work is done in the other `fem.cli_` modules.
 
 What a command needs is imported inside it, so that help comes at once.
 """
 
+import signal
 import sys
 import traceback
 from pathlib import Path
@@ -10,7 +11,7 @@ from typing import Annotated
 
 import typer
 
-from fem.cli_answer import BUG, EXIT_CODES, answering
+from fem.cli_answer import BUG, EXIT_CODES, INTERRUPTED, answering
 from fem.cli_stock import app as stock_app
 
 app = typer.Typer(
@@ -35,7 +36,7 @@ Seconds = Annotated[float | None, typer.Option(metavar="S", help="Allowance: lon
 
 @app.callback(invoke_without_command=True, epilog=EXIT_CODES)
 def heatvouch(ctx: typer.Context) -> None:
-    """Temperature histories of 2D sections, each number with the band that says how far it can be trusted.
+    r"""Temperature histories of 2D sections, each number with the band that says how far it can be trusted.
 
     \b
     Examples
@@ -51,7 +52,7 @@ def heatvouch(ctx: typer.Context) -> None:
 
 @app.command(epilog=EXIT_CODES, short_help="Tell what a docket says and all that is wrong with it.")
 def check(docket: DocketFile, *, variant: VariantName = None, as_json: AsJson = False) -> None:
-    """Read a docket, build its section, and tell what was found; nothing is solved.
+    r"""Read a docket, build its section, and tell what was found; nothing is solved.
 
     All problems of the docket are told at once: file, place, value, what is allowed, how to mend it.
 
@@ -61,7 +62,7 @@ def check(docket: DocketFile, *, variant: VariantName = None, as_json: AsJson = 
       heatvouch check deck.docket.toml --variant "thicker brick"
     """
     with answering(as_json=as_json):
-        from fem.cli_check import check_docket  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_check import check_docket
 
         check_docket(docket, variant=variant, as_json=as_json)
 
@@ -76,7 +77,7 @@ def look(
     cells: Cells = None,
     seconds: Seconds = None,
 ) -> None:
-    """Take a quick look: one run on one mesh. It has no band and claims nothing.
+    r"""Take a quick look: one run on one mesh. It has no band and claims nothing.
 
     \b
     Examples
@@ -84,7 +85,7 @@ def look(
       heatvouch look deck.docket.toml --json > look.json
     """
     with answering(as_json=as_json):
-        from fem.cli_run import QUICK, asked_for, run  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_run import QUICK, asked_for, run
 
         asked = asked_for(docket, variant=variant, cells=cells, seconds=seconds, again=again, as_json=as_json)
         raise typer.Exit(run(asked, QUICK))
@@ -101,11 +102,11 @@ def vouch(
     cells: Cells = None,
     seconds: Seconds = None,
 ) -> None:
-    """Earn the docket's numbers: a band on each, a verdict on each limit, a standing.
+    r"""Earn the docket's numbers: a band on each, a verdict on each limit, a standing.
 
-    It goes on until the bands settle what was asked or the allowance is spent, and tells at each turn what it found. The record is kept
-    beside the docket in NAME.records; a docket that has not changed is not run again. Ctrl-C keeps what was earned so far; a second
-    one aborts at once.
+    It goes on until the bands settle what was asked or the allowance is spent, and tells at each turn what it
+    found. The record is kept beside the docket in NAME.records; a docket that has not changed is not run again.
+    Ctrl-C keeps what was earned so far; a second one aborts at once.
 
     \b
     Examples
@@ -114,7 +115,7 @@ def vouch(
       heatvouch vouch deck.docket.toml --variant "thicker brick" --json > brick.json
     """
     with answering(as_json=as_json):
-        from fem.cli_run import VOUCH, asked_for, run  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_run import VOUCH, asked_for, run
 
         asked = asked_for(
             docket, variant=variant, band=band, cells=cells, seconds=seconds, again=again, as_json=as_json
@@ -136,10 +137,10 @@ def export(
     ] = None,
     as_json: AsJson = False,
 ) -> None:
-    """Write a record in open formats: CSV, VTU with PVD, MSH, JSON; or the docket packed with its logs.
+    r"""Write a record in open formats: CSV, VTU with PVD, MSH, JSON; or the docket packed with its logs.
 
-    The record is the vouch on the docket's shelf, or its quick look where there is no vouch. One of a run with --band, --cells or
-    --seconds is named with --record.
+    The record is the vouch on the docket's shelf, or its quick look where there is no vouch. One of a run with
+    --band, --cells or --seconds is named with --record.
 
     \b
     Examples
@@ -148,7 +149,7 @@ def export(
       heatvouch export deck.docket.toml --what docket --to parcel
     """
     with answering(as_json=as_json):
-        from fem.cli_export import export_docket  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_export import export_docket
 
         export_docket(docket, what, to, variant=variant, record=record, as_json=as_json)
 
@@ -157,6 +158,9 @@ def main() -> None:
     """Run the command line; a fault of ours keeps its trace and has an exit code of its own."""
     try:
         app()
+    except SystemExit as ended:
+        # Typer's own code for a Ctrl-C that comes before any command has begun.
+        sys.exit(INTERRUPTED if ended.code == 128 + signal.SIGINT else ended.code)
     except Exception:  # noqa: BLE001 - told apart from every standing, with all that is needed to find it
         traceback.print_exc()
         sys.exit(BUG)

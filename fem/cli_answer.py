@@ -43,7 +43,7 @@ def err() -> "Console":
 
 
 def _console(*, error: bool) -> "Console":
-    from rich.console import Console  # noqa: PLC0415 - help must not wait for it
+    from rich.console import Console
 
     terminal = (sys.stderr if error else sys.stdout).isatty()
     width = None if terminal or "COLUMNS" in os.environ else PIPE_WIDTH
@@ -55,9 +55,14 @@ def say(text: str) -> None:
     err().print(text, markup=False, highlight=False, soft_wrap=True)
 
 
+def tell(text: str) -> None:
+    """Print one line on the output, as it is."""
+    out().print(text, markup=False, highlight=False, soft_wrap=True)
+
+
 def put_json(content: dict[str, Any]) -> None:
     """Print plain data as strict JSON on the output."""
-    from fem.plain_json import as_json  # noqa: PLC0415 - help must not wait for it
+    from fem.plain_json import as_json
 
     sys.stdout.write(as_json(content) + "\n")
 
@@ -65,7 +70,7 @@ def put_json(content: dict[str, Any]) -> None:
 @contextmanager
 def answering(*, as_json: bool) -> Iterator[None]:
     """Turn every error that is not our bug into a message and an exit code."""
-    from fem.errors import DocketError, HeatvouchError  # noqa: PLC0415 - help must not wait for it
+    from fem.errors import DocketError, HeatvouchError
 
     try:
         yield
@@ -90,8 +95,8 @@ def _tell_problems(problems: "tuple[Problem, ...]") -> None:
     for number, problem in enumerate(problems, start=1):
         where = ": ".join(part for part in (problem.file, problem.place) if part)
         say(f"\n{number}. {where}")
-        spot = "" if problem.xy is None else f" at x = {problem.xy[0]:.6g} m, y = {problem.xy[1]:.6g} m"
-        rows = (("found", problem.value + spot), ("allowed", problem.allowed), ("to mend", problem.hint))
+        spot = "" if problem.xy is None else f"x = {problem.xy[0]:.6g} m, y = {problem.xy[1]:.6g} m"
+        rows = (("found", problem.value), ("at", spot), ("allowed", problem.allowed), ("to mend", problem.hint))
         for name, text in rows:
             if text:
                 say(f"   {name:8} {text}")

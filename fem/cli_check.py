@@ -1,26 +1,28 @@
-"""The work behind `check`: what a docket says, as plain data and as tables. Builds the section, solves nothing."""
+"""The work behind `check`: what a docket says, as plain data. Builds the section, solves nothing."""
 
 from pathlib import Path
 from typing import Any
 
 import numpy as np
-from rich.console import Console
-from rich.text import Text
 
 from fem.cli_answer import out, put_json
-from fem.cli_run import asked_for, read
-from fem.cli_tables import plain_table, under
+from fem.cli_check_tables import show
+from fem.cli_run import asked_for, in_docket, read
 from fem.docket import Docket
 from fem.docket_hash import content_hash
-from fem.edge import winding
+from fem.edge import Edge, winding
+from fem.errors import Problem, SectionError
 from fem.laws import Law
-from fem.numbers import Writer
+from fem.numbers import Scale, Writer
 from fem.pose import Posed, pose
 from fem.problem import Face
 from fem.section import Plan
 
 ON_BORDER = 1e-9
 """A gauge nearer to a curve than this part of the section's size lies on it: rounding of the coordinates."""
+OUTSIDE = "outside the section"
+SAMPLES = 500
+"""Instants at which a schedule is read, besides its breaks, for the lowest and highest value that is told."""
 
 Entry = dict[str, Any]
 
@@ -34,7 +36,10 @@ def check_docket(path: Path, *, variant: str | None, as_json: bool) -> None:
         With every problem of the docket, or of its section.
     """
     docket = read(asked_for(path, variant=variant))
-    found = found_in(docket, pose(docket))
+    with in_docket(path):
+        posed = pose(docket)
+        _refuse_gauges_outside(docket, posed.plan)
+    found = found_in(docket, posed)
     if as_json:
         put_json(found)
     else:
@@ -42,119 +47,155 @@ def check_docket(path: Path, *, variant: str | None, as_json: bool) -> None:
 
 
 def found_in(docket: Docket, posed: Posed) -> Entry:
-    """Return what was found, every number as text with its unit.
+    """Return what was found, numbers in the docket's units.
 
     Keys
     ----
-    title, content_hash, steady, revolution, notes, wanted, allowance, variants
+    title, content_hash, steady, revolution, notes, variants
+    units : {length, time, temperature, difference}
     regions : list of {name, stock, area, source}
+        `source` as the values of exposures, or null.
     edges : list of {name, length, faces}
-        The outside; `faces` names exposures, or says "insulated".
+        The outside; `faces` names exposures, none where it is insulated.
     interfaces : list of {between, length}
-    exposures : list of {name, on, what, laws}
-        `laws` tells each value: constant, or how often it jumps and kinks.
-    clock : null or {begin, end, report_every, instants, landings}
-    gauges : list of {name, at, region, band}
+    exposures : list of {name, on, length, values}
+        `values` by name: {over, lowest, highest, unit, jumps, kinks}; `over` tells what the value depends on; lowest
+        and highest are null where that is more than time.
+    clock : null or {begin, end, report_every, breaks}
+        `breaks` counts the instants on which the march lands between begin and end.
+    gauges : list of {name, x, y, region, band}
     limits : list of {name, sentence}
+    wanted : {gauges}
+    allowance : {cells, seconds}
     """
     writer = Writer(docket.units, steady=docket.steady, revolution=posed.problem.revolution)
+    units = {name: writer.scale(name).unit for name in ("length", "time", "temperature")}
+    difference = writer.scale("temperature difference")
     return {
         "title": docket.title,
         "content_hash": content_hash(docket),
         "steady": docket.steady,
         "revolution": posed.problem.revolution,
         "notes": list(posed.plan.notes),
-        "regions": _regions(posed, writer),
-        "edges": _edges(posed, writer),
-        "interfaces": _interfaces(posed.plan, writer),
-        "exposures": [_exposure(face, posed, writer) for face in posed.problem.faces],
-        "clock": _clock(docket, posed, writer),
-        "gauges": _gauges(docket, posed, writer),
-        "limits": [{"name": limit.name, "sentence": limit.sentence()} for limit in docket.limits],
-        "wanted": f"{writer.step('temperature difference', docket.wanted.gauges)} at the gauges",
-        "allowance": f"{docket.allowance.cells} cells, {docket.allowance.seconds:g} s",
         "variants": [variant.name for variant in docket.variants],
+        "units": {**units, "difference": difference.unit.removeprefix("delta_")},
+        "regions": _regions(posed, writer),
+        "edges": _edges(posed, writer.scale("length")),
+        "interfaces": _interfaces(posed.plan, writer.scale("length")),
+        "exposures": [_exposure(face, posed, writer) for face in posed.problem.faces],
+        "clock": _clock(docket, posed, writer.scale("time")),
+        "gauges": _gauges(docket, posed.plan, writer),
+        "limits": [{"name": limit.name, "sentence": limit.sentence()} for limit in docket.limits],
+        "wanted": {"gauges": difference.out(docket.wanted.gauges)},
+        "allowance": {"cells": docket.allowance.cells, "seconds": docket.allowance.seconds},
     }
 
 
 def _regions(posed: Posed, writer: Writer) -> list[Entry]:
+    square = writer.scale("length").factor ** 2
     rows = zip(posed.plan.region_names, posed.stocks, posed.plan.region_area, posed.problem.source, strict=True)
     return [
-        {"name": name, "stock": stock.stock, "area": writer.area(float(area)), "source": "" if source is None else told(source, posed)}
+        {
+            "name": name,
+            "stock": stock.stock,
+            "area": float(area) / square,
+            "source": None if source is None else value_of(source, "heat source", posed, writer),
+        }
         for name, stock, area, source in rows
     ]
 
 
-def _edges(posed: Posed, writer: Writer) -> list[Entry]:
+def _edges(posed: Posed, scale: Scale) -> list[Entry]:
     """Return the outside, edge by edge; a part of an edge that faces something else is an entry of its own."""
-    lengths: dict[tuple[str, str], float] = {}
+    lengths: dict[tuple[str, tuple[str, ...]], float] = {}
     for i, curve in enumerate(posed.plan.curves):
         if min(curve.left, curve.right) < 0:
-            faces = [face.name for face in posed.problem.faces if i in face.curves]
-            key = (", ".join(sorted(curve.labels)), " and ".join(faces) or "insulated")
+            faces = tuple(face.name for face in posed.problem.faces if i in face.curves)
+            key = (", ".join(sorted(curve.labels)), faces)
             lengths[key] = lengths.get(key, 0.0) + curve.length
-    return [{"name": name, "length": writer.length(length), "faces": faces} for (name, faces), length in sorted(lengths.items())]
+    rows = sorted(lengths.items())
+    return [{"name": name, "length": scale.out(length), "faces": list(faces)} for (name, faces), length in rows]
 
 
-def _interfaces(plan: Plan, writer: Writer) -> list[Entry]:
+def _interfaces(plan: Plan, scale: Scale) -> list[Entry]:
     lengths: dict[tuple[int, int], float] = {}
     for curve in plan.curves:
         if min(curve.left, curve.right) >= 0:
             pair = (min(curve.left, curve.right), max(curve.left, curve.right))
             lengths[pair] = lengths.get(pair, 0.0) + curve.length
     names = plan.region_names
-    return [{"between": [names[a], names[b]], "length": writer.length(length)} for (a, b), length in sorted(lengths.items())]
+    rows = sorted(lengths.items())
+    return [{"between": [names[a], names[b]], "length": scale.out(length)} for (a, b), length in rows]
+
+
+# --- exposures --------------------------------------------------------------------------------------
 
 
 def _exposure(face: Face, posed: Posed, writer: Writer) -> Entry:
-    length = sum(posed.plan.curves[i].length for i in face.curves)
-    laws = {} if face.held is None else {"held at": face.held}
-    laws |= {"flux": flux for flux in face.fluxes}
+    laws = [] if face.held is None else [("held at", face.held, "temperature")]
+    laws += [("flux", flux, "heat flux") for flux in face.fluxes]
     for film in face.films:
-        laws |= {"film coefficient": film.coefficient, "ambient": film.ambient}
+        laws += [("film", film.coefficient, "film coefficient"), ("ambient", film.ambient, "temperature")]
     for radiant in face.radiants:
-        laws |= {"emissivity": radiant.emissivity, "surroundings": radiant.surroundings}
-    words = {name: told(law, posed) for name, law in laws.items()}
-    return {"name": face.name, "on": face.edge, "length": writer.length(length), "laws": words}
+        laws += [("emissivity", radiant.emissivity, "fraction"), ("surroundings", radiant.surroundings, "temperature")]
+    length = sum(posed.plan.curves[i].length for i in face.curves)
+    values = {name: value_of(law, kind, posed, writer) for name, law, kind in laws}
+    return {"name": face.name, "on": face.edge, "length": writer.scale("length").out(length), "values": values}
 
 
-def told(law: Law, posed: Posed) -> str:
-    """Return in words what a law depends on, and how often it jumps and kinks within the clock."""
-    if law.constant:
-        return "constant"
-    names = {"t": "time", "x": "x", "y": "y", "T": "temperature"}
-    words = "over " + ", ".join(names[name] for name in sorted(law.needs, key="tTxy".index))
-    if "t" not in law.needs or posed.problem.begin is None or posed.problem.end is None:
-        return words
-    inside = [b for b in law.breaks if posed.problem.begin < b.t < posed.problem.end]
+def value_of(law: Law, kind: str, posed: Posed, writer: Writer) -> Entry:
+    """Return what a value depends on, its lowest and highest over the clock, and how often it jumps and kinks there."""
+    names = {"t": "time", "T": "temperature", "x": "x", "y": "y"}
+    over = [name for variable, name in names.items() if variable in law.needs]
+    scale = writer.scale(kind)
+    begin, end = posed.problem.begin or 0.0, posed.problem.end or 0.0
+    inside = [b for b in law.breaks if begin < b.t < end]
+    low = high = None
+    if law.needs <= {"t"}:
+        values = [float(law(t=t)) for t in _instants(begin, end, [b.t for b in inside])]
+        low, high = float(scale.out(min(values))), float(scale.out(max(values)))
     jumps = sum(b.jump for b in inside)
-    return f"{words}, {jumps} jump{'s' * (jumps != 1)} and {len(inside) - jumps} kink{'s' * (len(inside) - jumps != 1)}"
+    about = {"over": over, "lowest": low, "highest": high, "unit": scale.unit.removeprefix("delta_")}
+    return {**about, "jumps": jumps, "kinks": len(inside) - jumps}
 
 
-def _clock(docket: Docket, posed: Posed, writer: Writer) -> Entry | None:
+def _instants(begin: float, end: float, breaks: list[float]) -> list[float]:
+    """Return where to read a schedule: evenly, and at each break and right before it."""
+    before = [float(np.nextafter(t, begin)) for t in breaks]
+    return [*np.linspace(begin, end, SAMPLES).tolist(), *breaks, *before]
+
+
+# --- clock and gauges -------------------------------------------------------------------------------
+
+
+def _clock(docket: Docket, posed: Posed, scale: Scale) -> Entry | None:
     clock = docket.clock
     if clock is None:
         return None
-    return {
-        "begin": writer.time(clock.begin),
-        "end": writer.time(clock.end),
-        "report_every": writer.time(clock.report_every),
-        "instants": len(posed.problem.instants),
-        "landings": len(posed.problem.breaks()),
-    }
+    times = {"begin": clock.begin, "end": clock.end, "report_every": clock.report_every}
+    return {**{name: scale.out(t) for name, t in times.items()}, "breaks": len(posed.problem.breaks())}
 
 
-# --- gauges -------------------------------------------------------------------------------------------------------------------
+def _gauges(docket: Docket, plan: Plan, writer: Writer) -> list[Entry]:
+    length, difference = writer.scale("length"), writer.scale("temperature difference")
+    return [
+        {
+            "name": gauge.name,
+            "x": length.out(gauge.x),
+            "y": length.out(gauge.y),
+            "region": where(plan, gauge.x, gauge.y),
+            "band": difference.out(docket.wanted.gauges if gauge.band is None else gauge.band),
+        }
+        for gauge in docket.gauges
+    ]
 
 
-def _gauges(docket: Docket, posed: Posed, writer: Writer) -> list[Entry]:
-    rows = []
-    for gauge in docket.gauges:
-        band = docket.wanted.gauges if gauge.band is None else gauge.band
-        there = where(posed.plan, gauge.x, gauge.y)
-        wanted = writer.step("temperature difference", band)
-        rows.append({"name": gauge.name, "at": writer.place(gauge.x, gauge.y), "region": there, "band": wanted})
-    return rows
+def _refuse_gauges_outside(docket: Docket, plan: Plan) -> None:
+    writer = Writer(docket.units)
+    outside = [gauge for gauge in docket.gauges if where(plan, gauge.x, gauge.y) == OUTSIDE]
+    if outside:
+        allowed, hint = "a point of the section", "move it onto a region"
+        raise SectionError(Problem(f'gauge "{g.name}", at', writer.place(g.x, g.y), allowed, hint) for g in outside)
 
 
 def where(plan: Plan, x: float, y: float) -> str:
@@ -168,51 +209,9 @@ def where(plan: Plan, x: float, y: float) -> str:
         loops = [[_directed(plan, i, forward=forward) for i, forward in loop] for loop in face.loops]
         if sum(int(winding(loop, z)[0]) for loop in loops) > 0:
             return plan.region_names[face.region]
-    return "outside the section"
+    return OUTSIDE
 
 
-def _directed(plan: Plan, i: int, *, forward: bool) -> Any:
+def _directed(plan: Plan, i: int, *, forward: bool) -> Edge:
     edge = plan.curves[i].edge
     return edge if forward else edge.reversed()
-
-
-# --- for a terminal -----------------------------------------------------------------------------------------------------------
-
-
-def show(console: Console, found: Entry) -> None:
-    """Print what was found."""
-    kind = "body of revolution" if found["revolution"] else "planar section"
-    console.print(Text(found["title"] or "(no title)", style="bold"))
-    console.print(Text(f"{kind}, docket {found['content_hash'][:12]}", style="dim"))
-    for note in found["notes"]:
-        console.print(Text(f"note: {note}", style="yellow"))
-    _rows(console, "Regions", found["regions"], ("name", "stock", "area", "source"))
-    _rows(console, "Outside edges", found["edges"], ("name", "length", "faces"))
-    between = [{**entry, "between": " and ".join(entry["between"])} for entry in found["interfaces"]]
-    _rows(console, "Regions that touch", between, ("between", "length"))
-    laws = [{**entry, "facing": "\n".join(f"{name}: {law}" for name, law in entry["laws"].items())} for entry in found["exposures"]]
-    _rows(console, "Exposures", laws, ("name", "on", "length", "facing"))
-    _rows(console, "Gauges", found["gauges"], ("name", "at", "region", "band"))
-    _rows(console, "Limits", found["limits"], ("name", "sentence"))
-    clock = found["clock"]
-    lines = ["", "steady state" if clock is None else _clock_text(clock)]
-    lines += [f"wanted band: {found['wanted']}; allowance: {found['allowance']}"]
-    lines += [f"variants: {', '.join(found['variants'])}"] if found["variants"] else []
-    for line in [*lines, "nothing wrong was found; nothing was solved"]:
-        console.print(Text(line))
-
-
-def _clock_text(clock: Entry) -> str:
-    extra = f" and at {clock['instants']} further instants" if clock["instants"] else ""
-    landings = f"; the march lands on {clock['landings']} jumps, kinks and instants" if clock["landings"] else ""
-    return f"clock: {clock['begin']} to {clock['end']}, reported every {clock['report_every']}{extra}{landings}"
-
-
-def _rows(console: Console, title: str, entries: list[Entry], columns: tuple[str, ...]) -> None:
-    shown = [name for name in columns if any(entry[name] for entry in entries)]
-    if not entries:
-        return
-    table = plain_table(*shown)
-    for entry in entries:
-        table.add_row(*(str(entry[name]) for name in shown))
-    console.print(under(title, table))

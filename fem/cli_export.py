@@ -5,7 +5,7 @@ from pathlib import Path
 
 from fem import store
 from fem.atomic import whole_file
-from fem.cli_answer import put_json, say
+from fem.cli_answer import put_json, say, tell
 from fem.cli_run import QUICK, VOUCH, asked_for, on_shelf, read
 from fem.docket_file import pack, read_docket
 from fem.docket_hash import content_hash
@@ -38,7 +38,7 @@ def export_docket(
         put_json({"written": [str(path) for path in written]})
         return
     for path in written:
-        say(f"wrote {path}")
+        tell(f"wrote {path}")
 
 
 def parts_of(what: str) -> list[str]:
@@ -53,7 +53,7 @@ def parts_of(what: str) -> list[str]:
     unknown = [part for part in parts if part not in PARTS]
     if unknown or not parts:
         found = ", ".join(unknown) or "nothing"
-        raise DocketError.single("--what", found, f"{', '.join(PARTS)}, with commas between", "name one or several of these")
+        raise DocketError.single("--what", found, f"{', '.join(PARTS)}, with commas between", "name one or several")
     return parts
 
 
@@ -67,7 +67,8 @@ def _record(docket: Path, variant: str | None, folder: Path | None) -> Record:
             say(f"from the {kind} in {kept[0]}")
             return kept[1]
     raise StoreError(
-        f"{shelf} holds no record of this docket as it stands: run `heatvouch vouch {docket}` first, or name a record with --record"
+        f"{shelf} holds no record of this docket as it stands: "
+        f"run `heatvouch vouch {docket}` first, or name a record with --record"
     )
 
 

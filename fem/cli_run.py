@@ -1,6 +1,8 @@
 """The work behind `look` and `vouch`: read the docket, find or make its record, keep it, show it."""
 
 import os
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
@@ -14,7 +16,7 @@ from fem.docket import Docket
 from fem.docket_file import read_docket
 from fem.docket_form import changed
 from fem.docket_hash import content_hash
-from fem.errors import StoreError
+from fem.errors import DocketError, StoreError
 from fem.export_figures import figures_of
 from fem.record import Record
 from fem.units import Reading
@@ -78,10 +80,22 @@ def read(asked: Asked) -> Docket:
         docket = docket.variant(asked.variant)
     if not asked.changes:
         return docket
-    form = changed(docket.to_form(), asked.changes)
-    del form["docket"]
-    data = {**form, "title": docket.title, "units": docket.units}
-    return Docket.read(data, Reading(units=docket.units, logs=docket.logs))
+    try:
+        form = changed(docket.to_form(), asked.changes)
+        del form["docket"]
+        data = {**form, "title": docket.title, "units": docket.units}
+        return Docket.read(data, Reading(units=docket.units, logs=docket.logs))
+    except DocketError as error:
+        raise error.in_file("command line") from None
+
+
+@contextmanager
+def in_docket(path: Path) -> Iterator[None]:
+    """Name the docket's file in what is found wrong once it was read: its section, its gauges."""
+    try:
+        yield
+    except DocketError as error:
+        raise error.in_file(path.name) from None
 
 
 def run(asked: Asked, kind: str) -> int:
@@ -101,7 +115,8 @@ def run(asked: Asked, kind: str) -> int:
         _show(asked, record, str(folder))
         return exit_code(record)
     refuse_unwritable(shelf)
-    record = _work(docket, kind)
+    with in_docket(asked.docket):
+        record = _work(docket, kind)
     folder = store.place_on(shelf, digest, kind, record.outcome)
     try:
         where = str(store.save(record, folder))
@@ -113,7 +128,7 @@ def run(asked: Asked, kind: str) -> int:
 
 
 def on_shelf(shelf: Path, digest: str, kind: str) -> tuple[Path, Record] | None:
-    """Return the record that answers a docket, and its folder; None where there is none or it is damaged, which is told."""
+    """Return the folder and the record that answer a docket; None where none does, or only a damaged one."""
     try:
         folder = store.find(shelf, digest, kind)
         if folder is None:
@@ -145,11 +160,11 @@ def refuse_unwritable(shelf: Path) -> None:
     """
     folder = shelf if shelf.exists() else shelf.parent
     if not folder.is_dir() or not os.access(folder, os.W_OK):
-        raise StoreError(f"records cannot be kept in {shelf}: {folder} is no folder that can be written. Copy the docket to one")
+        raise StoreError(f"records cannot be kept in {shelf}: {folder} cannot be written; copy the docket elsewhere")
 
 
 def _work(docket: Docket, kind: str) -> Record:
-    from fem.vouch import look, vouch  # noqa: PLC0415 - the solver loads only when there is something to solve
+    from fem.vouch import look, vouch
 
     with Watch(err()) as watch:
         if kind == QUICK:

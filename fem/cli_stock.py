@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from fem.cli_answer import EXIT_CODES, answering, out, put_json, say
+from fem.cli_answer import EXIT_CODES, answering, out, put_json, say, tell
 
 if TYPE_CHECKING:
     from fem.stock import Stock
@@ -18,7 +18,7 @@ Name = Annotated[str, typer.Argument(metavar="NAME", help="The stock's name, in 
 
 @app.callback(invoke_without_command=True)
 def stock(ctx: typer.Context) -> None:
-    """List, show and plot the library's materials.
+    r"""List, show and plot the library's materials.
 
     \b
     Examples
@@ -36,7 +36,7 @@ def list_stock(
     *,
     as_json: AsJson = False,
 ) -> None:
-    """List the stocks of the library.
+    r"""List the stocks of the library.
 
     \b
     Examples
@@ -44,8 +44,8 @@ def list_stock(
       heatvouch stock list insulating brick
     """
     with answering(as_json=as_json):
-        from fem.cli_stock_tables import listing, listing_table  # noqa: PLC0415 - help must not wait for it
-        from fem.stock import find, library  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_stock_tables import listing, listing_table
+        from fem.stock import find, library
 
         found = find(search) if search.strip() else list(library().values())
         if as_json:
@@ -58,14 +58,14 @@ def list_stock(
 
 @app.command("show", epilog=EXIT_CODES)
 def show_stock(name: Name, *, as_json: AsJson = False) -> None:
-    """Show a stock: its values over temperature, where they hold, and where each comes from.
+    r"""Show a stock: its values over temperature, where they hold, and where each comes from.
 
     \b
     Examples
       heatvouch stock show "fireclay brick"
     """
     with answering(as_json=as_json):
-        from fem.cli_stock_tables import listing, show  # noqa: PLC0415 - help must not wait for it
+        from fem.cli_stock_tables import listing, show
 
         stock = named(name)
         if as_json:
@@ -76,22 +76,26 @@ def show_stock(name: Name, *, as_json: AsJson = False) -> None:
 
 @app.command("plot", epilog=EXIT_CODES)
 def plot(
-    name: Name, *, to: Annotated[Path, typer.Option(metavar="FILE.png", help="The picture; one that is there is replaced.")]
+    name: Name,
+    *,
+    to: Annotated[Path, typer.Option(metavar="FILE.png", help="The picture; one that is there is replaced.")],
 ) -> None:
-    """Plot a stock's properties over temperature, with their sources, into a PNG file.
+    r"""Plot a stock's properties over temperature, with their sources, into a PNG file.
 
     \b
     Examples
       heatvouch stock plot "fireclay brick" --to fireclay.png
     """
     with answering(as_json=False):
-        from fem.errors import DocketError, StoreError  # noqa: PLC0415 - help must not wait for it
-        from fem.stock_plot import plot_stock  # noqa: PLC0415 - help must not wait for it
+        from fem.errors import DocketError, StoreError
+        from fem.stock_plot import plot_stock
 
         if to.suffix.lower() != ".png":
-            raise DocketError.single("--to", str(to), "a file that ends in .png", "name it so: it will hold a PNG picture")
+            raise DocketError.single(
+                "--to", str(to), "a file that ends in .png", "name it so: it will hold a PNG picture"
+            )
         try:
-            say(f"wrote {plot_stock(named(name), to)}")
+            tell(f"wrote {plot_stock(named(name), to)}")
         except OSError as error:
             raise StoreError(f"{to} could not be written: {error.strerror or error}") from error
 
@@ -104,8 +108,8 @@ def named(name: str) -> "Stock":
     DocketError
         If there is none, with the nearest names.
     """
-    from fem.errors import DocketError  # noqa: PLC0415 - help must not wait for it
-    from fem.stock import library, nearest  # noqa: PLC0415 - help must not wait for it
+    from fem.errors import DocketError
+    from fem.stock import library, nearest
 
     for stock in library().values():
         if name.casefold() in (label.casefold() for label in (stock.name, *stock.aliases)):

@@ -30,7 +30,14 @@ def weakest_kind(stock: Stock) -> str:
 def listing_table(stocks: Iterable[Stock]) -> Table:
     """Return the list: one line a stock, its values over its range, the weakest kind of source among them."""
     table = plain_table(
-        "stock", "family", "k, W/(m K)", "density, kg/m³", "c, J/(kg K)", "holds, °C", "sources", wrapped=("stock", "sources")
+        "stock",
+        "family",
+        "k, W/(m K)",
+        "density, kg/m³",
+        "c, J/(kg K)",
+        "holds, °C",
+        "sources",
+        wrapped=("stock", "sources"),
     )
     for stock in stocks:
         values = [_extent(stock, name) for name in PROPERTIES]
@@ -65,7 +72,9 @@ def show(console: Console, stock: Stock) -> None:
     if stock.note:
         console.print(Text(stock.note))
     values = stock_table(stock, ROWS)
-    table = Table(*("T, °C", "k, W/(m K)", "density, kg/m³", "c, J/(kg K)", "diffusivity, mm²/s"), box=None, padding=(0, 2))
+    table = Table(
+        *("T, °C", "k, W/(m K)", "density, kg/m³", "c, J/(kg K)", "diffusivity, mm²/s"), box=None, padding=(0, 2)
+    )
     for column in table.columns:
         column.justify = "right"
     for T, k, rho, c, alpha in zip(*values, strict=True):

@@ -1,8 +1,9 @@
-"""A record as tables for a terminal. Reads, never solves; every number with its band, or with the words that it has none."""
+"""A record as tables for a terminal: every number with its band, or with the words that it has none. Never solves."""
 
 import math
 from collections.abc import Iterable
 
+import numpy as np
 from rich import box
 from rich.console import Console, Group, RenderableType
 from rich.padding import Padding
@@ -28,19 +29,21 @@ def show_record(console: Console, record: Record) -> None:
 
 def _parts(record: Record) -> list[RenderableType]:
     writer = Writer.of(record)
-    parts = [_head(record), gauges(record, writer), regions(record, writer), limits(record, writer), ledger(record, writer)]
-    parts += [findings(record, writer), standing(record)]
+    tables = (gauges, regions, limits, ledger, findings)
+    parts = [_head(record), *(table(record, writer) for table in tables), standing(record)]
     return [part for part in parts if part is not None]
 
 
 def _head(record: Record) -> RenderableType:
     title = Text(record.title or "(no title)", style="bold")
-    size = f"finest mesh {len(record.mesh.cells)} cells" if record.kind == "vouch" else f"{len(record.mesh.cells)} cells"
+    size = f"{'finest mesh ' if record.kind == 'vouch' else ''}{len(record.mesh.cells)} cells"
     steady = ", steady state" if record.steady else ""
     made = f"{record.kind} of docket {record.content_hash[:12]}{steady}, {size}, {record.seconds:.1f} s of work"
     lines = [title, Text(made, style="dim")]
     if record.kind == "quick look":
         lines.append(Text("no band (quick look): one run on one mesh, no number here is vouched for", style="yellow"))
+    elif not np.isfinite(record.figures.band).any():
+        lines.append(Text("no band: the work ended before there were runs to compare", style="yellow"))
     if record.outcome != "finished":
         lines.append(Text(f"outcome: {record.outcome}", style="red"))
     return Group(*lines)
@@ -59,7 +62,7 @@ def under(title: str, table: Table) -> RenderableType:
     return Group("", Text(title, style="bold"), Padding(table, (0, 0, 0, 1)))
 
 
-# --- temperatures -------------------------------------------------------------------------------------------------------------
+# --- temperatures ---------------------------------------------------------------------------------
 
 
 def gauges(record: Record, writer: Writer) -> RenderableType | None:
@@ -69,10 +72,10 @@ def gauges(record: Record, writer: Writer) -> RenderableType | None:
         return None
     if record.steady:
         return _steady_table("Gauges", record, writer, keys)
-    table = plain_table("gauge", "highest", "at", "lowest", "at", "at the end")
+    table = plain_table("gauge", "highest", "lowest", _last_column(record), wrapped=("gauge",))
     for key in keys:
-        high, low = (peak_text(writer, record.figures.peak(key, lowest=lowest)) for lowest in (False, True))
-        table.add_row(key.name, *high, *low, _end(record, writer, key))
+        high, low = (_extreme(record, writer, key, lowest=lowest) for lowest in (False, True))
+        table.add_row(key.name, high, low, _end(record, writer, key))
     return under("Gauges", table)
 
 
@@ -84,15 +87,25 @@ def regions(record: Record, writer: Writer) -> RenderableType | None:
     if record.steady:
         wanted = [key for key in record.figures.keys if key.kind in ("highest", "lowest", "mean")]
         return _steady_table("Regions", record, writer, wanted)
-    table = plain_table("region", "hottest point", "at", "coldest point", "at")
+    table = plain_table("region", "hottest point", "coldest point", wrapped=("region",))
     for name in names:
-        row = [name or "whole section"]
-        for kind, lowest in (("highest", False), ("lowest", True)):
-            key = Key(kind, name)
-            known = key in record.figures.keys
-            row += peak_text(writer, record.figures.peak(key, lowest=lowest)) if known else ("", "")
-        table.add_row(*row)
+        keys = [Key(kind, name) for kind in ("highest", "lowest")]
+        known = [key in record.figures.keys for key in keys]
+        cells = [
+            _extreme(record, writer, key, lowest=key.kind == "lowest") if there else ""
+            for key, there in zip(keys, known, strict=True)
+        ]
+        table.add_row(name or "whole section", *cells)
     return under("Regions", table)
+
+
+def _last_column(record: Record) -> str:
+    return "at the end" if record.outcome == "finished" else "where it stopped"
+
+
+def _extreme(record: Record, writer: Writer, key: Key, *, lowest: bool) -> Text:
+    value, when = peak_text(writer, record.figures.peak(key, lowest=lowest))
+    return Text.assemble(value, (f"\nat {when}", "dim"))
 
 
 def _steady_table(title: str, record: Record, writer: Writer, keys: Iterable[Key]) -> RenderableType:
@@ -107,19 +120,21 @@ def _end(record: Record, writer: Writer, key: Key) -> str:
     return writer.value("temperature", float(value[-1]), float(band[-1]))
 
 
-# --- limits -------------------------------------------------------------------------------------------------------------------
+# --- limits ---------------------------------------------------------------------------------------
 
 
 def limits(record: Record, writer: Writer) -> RenderableType | None:
     """Return the table of limits: verdict, margin in kelvin and in bands, and when."""
     if not record.verdicts:
         return None
-    table = plain_table("limit", "verdict", "margin", "in bands", "when", wrapped=("limit", "when"))
+    table = plain_table("limit", "verdict", "margin", wrapped=("limit",))
     for verdict in record.verdicts:
         name = Text(verdict.limit)
-        name.append(f"\n{verdict.text}", style="dim")
-        margin = writer.margin(verdict.margin, verdict.band, is_rate=verdict.is_rate)
-        table.add_row(name, call_text(verdict), margin, bands_text(verdict), _when(record, writer, verdict))
+        when = _when(record, writer, verdict)
+        name.append(f"\n{verdict.text}" + (f"\n{when}" if when else ""), style="dim")
+        margin = Text(writer.margin(verdict.margin, verdict.band, is_rate=verdict.is_rate))
+        margin.append(f"\n{bands_text(verdict)}", style="dim")
+        table.add_row(name, call_text(verdict), margin)
     return under("Limits", table)
 
 
@@ -131,12 +146,11 @@ def call_text(verdict: Verdict) -> Text:
 
 
 def bands_text(verdict: Verdict) -> str:
-    """Return the margin in bands."""
+    """Return the margin in bands, in words; nothing where there is no band."""
     if not math.isfinite(verdict.band):
         return ""
-    sign = "-" if verdict.margin < 0 else "+"
     size = abs(verdict.bands)
-    return f"{sign}{size:.2g}" if size < MANY else f"{sign}over {MANY:.0f}"
+    return f"{size:.2g} bands" if size < MANY else f"over {MANY:.0f} bands"
 
 
 def _when(record: Record, writer: Writer, verdict: Verdict) -> str:
@@ -150,34 +164,41 @@ def _when(record: Record, writer: Writer, verdict: Verdict) -> str:
     return text if text.startswith("not") else f"reached at {text}"
 
 
-# --- heat ---------------------------------------------------------------------------------------------------------------------
+# --- heat -----------------------------------------------------------------------------------------
 
 
 def ledger(record: Record, writer: Writer) -> RenderableType:
-    """Return the heat ledger; totals that have a band carry it, the split over edges is that of the finest run."""
-    book = record.ledger
+    """Return the heat ledger: in through each exposure and each of its edges, made, stored, unexplained.
+
+    What has a band carries it; what has none is the exact account of the finest run.
+    """
+    book, kind = record.ledger, "flow" if record.steady else "heat"
     table = plain_table("heat", "amount")
-    for key in record.figures.keys:
-        if key.kind == "heat":
-            table.add_row(f"in through {key.name}, all its edges", _total(record, writer, key))
-    for name, heat in book.through:
-        table.add_row(f"  in through {name}", writer.heat(heat))
+    for name in dict.fromkeys(key.name for key in record.figures.keys if key.kind == kind):
+        edges = [(edge, heat) for edge, heat in book.through if edge.startswith(f"{name} on ")]
+        if len(edges) > 1:
+            table.add_row(f"in through {name}, all its edges", _amount(record, writer, Key(kind, name), None))
+        for edge, heat in edges:
+            words = f"  of it{edge.removeprefix(name)}" if len(edges) > 1 else f"in through {edge}"
+            whole = Key(kind, name if len(edges) == 1 else edge)
+            table.add_row(words, _amount(record, writer, whole, heat))
     for name, heat in book.made:
-        table.add_row(f"made in {name}", writer.heat(heat))
-    stored = Key("stored", "")
-    known = stored in record.figures.keys and not record.steady
-    table.add_row("stored", _total(record, writer, stored) if known else writer.heat(book.stored))
+        table.add_row(f"made in {name}", _amount(record, writer, Key("made", name), heat))
+    table.add_row("stored", _amount(record, writer, Key("stored", ""), book.stored))
     part = f"{100.0 * book.part:.2g} % of the {writer.heat(book.turned_over)} turned over"
     table.add_row("unexplained", f"{writer.heat(book.unexplained)}, {part}")
     return under("Heat ledger of the finest run", table)
 
 
-def _total(record: Record, writer: Writer, key: Key) -> str:
-    value, band = record.figures.series(key)
-    return writer.value("heat", float(value[-1]), float(band[-1]))
+def _amount(record: Record, writer: Writer, key: Key, exact: float | None) -> str:
+    """Return the last value of a series with its band; the exact account where there is no such series."""
+    if key in record.figures.keys:
+        value, band = record.figures.series(key)
+        return writer.value("heat", float(value[-1]), float(band[-1]))
+    return "" if exact is None else writer.heat(exact)
 
 
-# --- findings and standing ----------------------------------------------------------------------------------------------------
+# --- findings and standing ------------------------------------------------------------------------
 
 
 def findings(record: Record, writer: Writer) -> RenderableType | None:
@@ -187,7 +208,11 @@ def findings(record: Record, writer: Writer) -> RenderableType | None:
     table = plain_table("check", "", "what was found", wrapped=("what was found",))
     for finding in sorted(record.findings, key=lambda found: not found.blocks):
         told = Text(finding.message)
-        if finding.x is not None and finding.y is not None and writer.place(finding.x, finding.y) not in finding.message:
+        if (
+            finding.x is not None
+            and finding.y is not None
+            and writer.place(finding.x, finding.y) not in finding.message
+        ):
             told.append(f" — at {writer.place(finding.x, finding.y)}")
         if finding.close:
             told.append(f"\nto close it: {finding.close}", style="dim")

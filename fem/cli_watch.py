@@ -38,7 +38,7 @@ class Watch:
         self._task: TaskID | None = None
         self._told, self._told_at = "", -PLAIN_EVERY
 
-    # --- as a context ---------------------------------------------------------------------------------------------------------
+    # --- as a context -----------------------------------------------------------------------------
     def __enter__(self) -> Self:
         """Take over Ctrl-C and, on a terminal, show the bar."""
         if threading.current_thread() is threading.main_thread():
@@ -46,11 +46,13 @@ class Watch:
         if self.console.is_terminal:
             columns = (TextColumn("{task.description}"), BarColumn(bar_width=30), TaskProgressColumn())
             self._bar = Progress(*columns, TextColumn("{task.fields[left]}"), console=self.console, transient=True)
-            self._task = self._bar.add_task("reading", total=1.0, left="")
+            self._task = self._bar.add_task("section and mesh", total=1.0, left="")
             self._bar.start()
         return self
 
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None) -> None:
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
         """Give Ctrl-C back and clear the bar."""
         if self._bar is not None:
             self._bar.stop()
@@ -62,7 +64,7 @@ class Watch:
         signal.signal(signal.SIGINT, signal.default_int_handler)
         os.write(2, STOPPING)  # plain: a handler may run in the middle of a print
 
-    # --- what the work calls --------------------------------------------------------------------------------------------------
+    # --- what the work calls ----------------------------------------------------------------------
     def stop(self) -> bool:
         """Return whether the user asked to stop."""
         return self._stop.is_set()

@@ -55,10 +55,6 @@ class _OnEdge:
         """Tell pydantic to read the field through this mark."""
         return core_schema.with_info_plain_validator_function(self._validate)
 
-    def __get_pydantic_json_schema__(self, _schema: Any, _handler: Any) -> dict[str, Any]:
-        """Describe the field."""
-        return {"type": ["string", "object"]}
-
 
 EdgeRef = Annotated[str | Stretch, _OnEdge()]
 

@@ -6,11 +6,12 @@ TOML 1.0 is read by the standard library; files that exist are changed through t
 import os
 import tempfile
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 from fem.docket import Docket
-from fem.docket_form import FORMAT
+from fem.docket_form import FORMAT, changed
 from fem.docket_text import merged, new_text
 from fem.docket_zip import MAX_TEXT, SUFFIX, open_zip, zip_bytes
 from fem.errors import DocketError, Problem, shown
@@ -82,7 +83,7 @@ def read_text(text: str, *, logs: LogFolder, file: str = "") -> Docket:
         try:
             docket = Docket.read({**data, "title": title, "units": units}, Reading(units=units, logs=logs))
         except DocketError as error:
-            raise DocketError((*problems, *error.problems)) from None
+            raise DocketError(dict.fromkeys((*problems, *error.problems, *_lost_paths(data)))) from None
         if problems:
             raise DocketError(problems)
     except DocketError as error:
@@ -137,6 +138,18 @@ def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[s
     return FileUnits(**units), head.get("title", ""), sorted(problems, key=lambda p: p.place), data
 
 
+def _lost_paths(data: dict[str, Any]) -> list[Problem]:
+    """Return the problems of the variants' paths, for a docket that has others."""
+    problems = []
+    for variant in data.get("variant", ()) if isinstance(data.get("variant"), list) else ():
+        changes = variant.get("changes") if isinstance(variant, dict) else None
+        try:
+            changed(data, changes if isinstance(changes, dict) else {})
+        except DocketError as error:
+            problems += [replace(p, place=f'variant "{variant.get("name")}", {p.place}') for p in error.problems]
+    return problems
+
+
 def to_text(docket: Docket) -> str:
     """Return a docket as the text of a new file.
 
@@ -151,6 +164,8 @@ def to_text(docket: Docket) -> str:
 def update_text(text: str, docket: Docket) -> str:
     """Return the text of a file changed so that it holds the docket; comments and layout stay where nothing changed.
 
+    Arrays of tables that stand mixed (a region, a gauge, a region) are brought together by tomlkit when anything changes.
+
     Parameters
     ----------
     text : str
@@ -162,6 +177,8 @@ def update_text(text: str, docket: Docket) -> str:
         If the text is no sound docket, or the docket holds a law or callable.
     """
     old = read_text(text, logs=docket.logs)
+    if old == docket:
+        return text
     same_units = old.units == docket.units
     return _checked(merged(text, old.to_form() if same_units else None, docket.to_form()), docket)
 

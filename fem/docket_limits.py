@@ -1,13 +1,13 @@
 """Gauges, and the limits that are judged against the bands of their histories."""
 
-from typing import Any, Literal, Self
+from typing import Any, ClassVar, Literal, Self
 
 from pydantic import Field, model_validator
 from pydantic_core import core_schema
 
 from fem.docket_section import DotlessName, Name
 from fem.errors import Said
-from fem.strict import Strict, fault, raise_all
+from fem.strict import Strict, fault, raise_all, raise_one
 from fem.units import Length, PositiveDuration, Rate, Temperature, TemperatureDifference, Time, celsius, reading, said
 
 Must = Literal[
@@ -36,6 +36,9 @@ OPTIONAL: dict[str, tuple[str, ...]] = {
 class Gauge(Strict):
     """A point whose temperature history is recorded: where a thermocouple sits, or would. In a file ``at = [x, y]``."""
 
+    HINTS: ClassVar[dict[str, str]] = {"at": "write at = [x, y]"}
+    SPELLED: ClassVar[dict[str, str]] = {"x": "at", "y": "at"}
+
     name: Name = Field(description="The gauge's name.")
     x: Length = Field(description="Across the section.")
     y: Length = Field(description="Up the section.")
@@ -45,18 +48,18 @@ class Gauge(Strict):
     )
 
     @classmethod
-    def keys(cls) -> tuple[str, ...]:
+    def file_keys(cls) -> tuple[str, ...]:
         """Return the keys that a file may use."""
-        return tuple(key for key in ("at", *super().keys()) if key not in ("x", "y"))
+        return tuple(key for key in ("at", *super().file_keys()) if key not in ("x", "y"))
 
     @classmethod
     def from_short(cls, data: Any) -> Any:
         """Read at = [x, y]."""
-        if not isinstance(data, dict) or ("at" not in data and {"x", "y"} <= data.keys()):
+        if not isinstance(data, dict) or "at" not in data:
             return data
-        at = data.get("at")
+        at = data["at"]
         if not isinstance(at, list | tuple) or len(at) != 2:
-            raise_all("gauge", [fault(("at",), at, "[x, y]", "write the two coordinates of the gauge")])
+            raise_one(("at",), at, "[x, y]", "write the two coordinates of the gauge")
         return {**{key: value for key, value in data.items() if key != "at"}, "x": at[0], "y": at[1]}
 
     @classmethod

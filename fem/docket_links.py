@@ -68,15 +68,23 @@ def _stocks(parts: Parts) -> list[InitErrorDetails]:
     return faults
 
 
+def _edges(parts: Parts) -> dict[str, tuple[str, ...]]:
+    """Return the names of the edges of every region; where a name is doubled, of the first."""
+    edges: dict[str, tuple[str, ...]] = {}
+    for _, region in parts.regions:
+        edges.setdefault(region.name, region.edges())
+    return edges
+
+
 def _exposures(parts: Parts) -> list[InitErrorDetails]:
-    edges = {region.name: region.edges() for _, region in parts.regions}
+    edges = _edges(parts)
     faults = []
     for i, exposure in parts.exposures:
         covered: set[str] = set()
         for j, ref in enumerate(exposure.on):
             loc = ("exposure", i, "on", j)
-            if ref is None:
-                continue
+            if not ref:
+                continue  # a faulty one, listed with its exposure
             if isinstance(ref, Stretch):
                 if ref.region not in parts.known("region"):
                     allowed, hint = unknown("the regions", ref.region, parts.known("region"))
@@ -104,7 +112,7 @@ def _covered(region: str, edge: str, covered: set[str]) -> bool:
 
 def _held_alone(parts: Parts) -> list[InitErrorDetails]:
     """Return the named edges that an exposure holds at a temperature while another one acts on them too."""
-    edges = {region.name: region.edges() for _, region in parts.regions}
+    edges = _edges(parts)
     faults: list[InitErrorDetails] = []
     owner: dict[str, Exposure] = {}
     for i, exposure in parts.exposures:

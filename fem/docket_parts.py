@@ -3,7 +3,7 @@
 import functools
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from typing import Annotated, Any, TypeVar, get_args, get_origin
+from typing import Annotated, Any, TypeVar, cast, get_args, get_origin
 
 from pydantic import ConfigDict, TypeAdapter, ValidationError
 
@@ -73,7 +73,7 @@ class Parts:
             clock=_clock(clock, context),
             timed=None if clock is ... else clock is not None,
             start=start is not None and _get(start, "everywhere") is not None,
-            units=context.units,
+            units=units if isinstance(units := data.get("units"), FileUnits) else context.units,
         )
 
     def time(self, t: float) -> str:
@@ -132,12 +132,13 @@ def _sound_fields(model: type[Part], item: dict[str, Any], faulty: set[str], con
     for name, field in model.model_fields.items():
         key = name if name in table else field.alias
         if key in table and isinstance(table[key], list | tuple) and _element(field.annotation) is not None:
-            values[name] = tuple(_try(_element_adapter(model, name), element, context) for element in table[key])
+            rows = [_try(_element_adapter(model, name), element, context) for element in table[key]]
+            values[name] = tuple(row for row in rows if row is not None or name == "on")
         elif key in table and key not in faulty:
             values[name] = _try(_adapter(model, name), table[key], context)
         elif field.is_required():
             values[name] = () if _element(field.annotation) is not None else ""
-    return model.model_construct(**values)
+    return cast("Part", model.model_construct(**values))
 
 
 def _element(annotation: Any) -> Any:

@@ -100,9 +100,9 @@ class Region(Strict):
     )
 
     @classmethod
-    def keys(cls) -> tuple[str, ...]:
+    def file_keys(cls) -> tuple[str, ...]:
         """Return the keys that a file may use."""
-        return (*super().keys(), "void")
+        return (*super().file_keys(), "void")
 
     @classmethod
     def from_short(cls, data: Any) -> Any:
@@ -127,9 +127,7 @@ class Region(Strict):
     def _closed(self, info: core_schema.ValidationInfo) -> Self:
         units, faults = reading(info.context).units, []
         if len(self.outline) == 2 and all(vertex.via is None for vertex in self.outline):
-            faults.append(
-                fault(("outline",), Said("two corners and no arc"), "three corners, or two with an arc", "add a corner")
-            )
+            faults.append(fault(("outline",), Said("two corners"), "three corners, or two and an arc", "add a corner"))
         after = (*self.outline[1:], self.outline[0])
         for i, (here, there) in enumerate(zip(self.outline, after, strict=True)):
             if (here.x, here.y) == (there.x, there.y):
@@ -175,8 +173,6 @@ class Section(Strict):
                         value = said(vertex.x, "length", units)
                         faults.append(fault(("region", i, "outline", j, "x"), value, "a radius >= 0", hint))
         if all(region.stock is None for region in self.regions):
-            faults.append(
-                fault(("region",), Said("nothing but voids"), "at least one region of stock", "give a region a stock")
-            )
+            faults.append(fault(("region",), Said("nothing but voids"), "a region of stock", "give one a stock"))
         raise_all("section", faults)
         return self

@@ -57,9 +57,10 @@ def _item(value: Any) -> Item:
         for inner in value:
             array.append(_item(inner))
         rows = any(isinstance(inner, list | tuple | dict) for inner in value)
-        array.multiline(rows and len(value) > SHORT_ROWS)
+        array.multiline(multiline=rows and len(value) > SHORT_ROWS)
         return array
-    return tomlkit.item(value)
+    item: Item = tomlkit.item(value)
+    return item
 
 
 def merged(text: str, old: Form | None, new: Form) -> str:

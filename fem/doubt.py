@@ -7,6 +7,7 @@ since both runs exist, and was measured to find 95 to 100 % of the truly worst c
 import numpy as np
 from numpy.typing import NDArray
 
+from fem.history import Key
 from fem.study import Study
 
 Floats = NDArray[np.float64]
@@ -50,9 +51,9 @@ def passes_needed(doubt: Floats, target: float, *, most: int = 3) -> NDArray[np.
     return np.asarray(np.clip(splits, 0, most), dtype=np.int_)
 
 
-def step_doubt(study: Study) -> Floats:
-    """Return what each step of the first run owes: the largest nodal change, K, when steps are halved; shape (n_steps,)."""
-    whole, half = study.timing[0], study.timing[1]
-    gaps = np.array([np.abs(a - b).max() for a, b in zip(whole.frames, half.frames, strict=False)])
-    owner = np.clip(np.searchsorted(whole.frame_times, whole.steps.times[1:], side="left"), 0, len(gaps) - 1)
-    return np.asarray(gaps[owner])
+def step_doubt(study: Study, key: Key) -> Floats:
+    """Return what each step of the first run owes of one series: its change at the step's end when steps are halved; (n_steps,)."""
+    whole, half = study.timing[0].history, study.timing[1].history
+    ends = study.timing[0].steps.times[1:]
+    before = np.full(len(ends), -1)
+    return np.asarray(np.abs(whole.sample(ends, before)[whole.row(key)] - half.sample(ends, before)[half.row(key)]))

@@ -1,4 +1,7 @@
-"""One edge of an outline: a straight line or a circular arc, exact. Inside the geometry modules a point is a complex number x + iy, m."""
+"""One edge of an outline: a straight line or a circular arc, exact.
+
+Inside the modules on geometry a point is a complex number x + iy, m.
+"""
 
 import cmath
 import math
@@ -45,6 +48,13 @@ class Edge:
         return abs(self.end - self.start) if self.centre is None else self.radius * abs(self.sweep)
 
     @property
+    def hub(self) -> complex:
+        """Return the centre of an arc, m; only for arcs."""
+        if self.centre is None:
+            raise TypeError("a line has no centre")
+        return self.centre
+
+    @property
     def middle(self) -> complex:
         """Return the point half-way along, m."""
         return complex(self.at(np.array([0.5]))[0])
@@ -68,7 +78,7 @@ class Edge:
             z = self.start + f * (self.end - self.start)
         else:
             z = self.centre + (self.start - self.centre) * np.exp(1j * self.sweep * f)
-        return np.asarray(np.where(f == 0.0, self.start, np.where(f == 1.0, self.end, z)), dtype=np.complex128)  # noqa: RUF069
+        return np.asarray(np.where(f == 0.0, self.start, np.where(f == 1.0, self.end, z)), dtype=np.complex128)
 
     def tangent(self, fraction: Floats) -> Complexes:
         """Return unit tangents in the running direction at fractions (n,)."""
@@ -80,7 +90,7 @@ class Edge:
         return np.asarray(1j * math.copysign(1.0, self.sweep) * spoke * np.exp(1j * self.sweep * f))
 
     def fraction(self, z: Complexes) -> Floats:
-        """Return the fraction of the length at which the nearest point of the (extended) carrier of points (n,) lies."""
+        """Return at which fractions of the length the nearest points of the extended edge to points (n,) lie."""
         z = np.asarray(z, dtype=np.complex128)
         if self.centre is None:
             d = self.end - self.start
@@ -95,6 +105,22 @@ class Edge:
         z = np.asarray(z, dtype=np.complex128)
         inside = np.clip(self.fraction(z), 0.0, 1.0)
         return np.asarray(np.abs(z - self.at(inside)))
+
+    def box(self) -> tuple[complex, complex]:
+        """Return two corners of a box around the edge: around the whole circle of an arc, which is simple and safe."""
+        if self.centre is not None:
+            reach = complex(self.radius, self.radius)
+            return self.centre - reach, self.centre + reach
+        low = complex(min(self.start.real, self.end.real), min(self.start.imag, self.end.imag))
+        return low, self.start + self.end - low
+
+    def near(self, z: Complexes, tolerance: float) -> NDArray[np.intp]:
+        """Return which of the points (n,) lie within the tolerance of the edge."""
+        low, high = self.box()
+        x, y = z.real, z.imag
+        inside = (x >= low.real - tolerance) & (x <= high.real + tolerance)
+        maybe = np.flatnonzero(inside & (y >= low.imag - tolerance) & (y <= high.imag + tolerance))
+        return np.asarray(maybe[self.distance(z[maybe]) <= tolerance])
 
     def between(self, a: complex, b: complex, *, from_fraction: float, to_fraction: float) -> "Edge":
         """Return the piece between two points on the edge (at the given fractions); carrier unchanged."""
@@ -111,7 +137,7 @@ class Edge:
 
 
 FLATTEST_ARC = 1e-6
-"""An arc whose rise over its chord is below this part of the chord is refused as straight; common practice, no source."""
+"""An arc that rises over its chord by less than this part of it counts as straight; common practice, no source."""
 
 
 def arc_through(start: complex, via: complex, end: complex) -> Edge | None:
@@ -151,7 +177,7 @@ def _line_line(a: Edge, b: Edge) -> list[complex]:
 
 
 def _line_circle(line: Edge, arc: Edge, tolerance: float) -> list[complex]:
-    centre = _centre(arc)
+    centre = arc.hub
     u = (line.end - line.start) / abs(line.end - line.start)
     foot = line.start + u * ((centre - line.start) * u.conjugate()).real
     d = abs(foot - centre)
@@ -164,7 +190,7 @@ def _line_circle(line: Edge, arc: Edge, tolerance: float) -> list[complex]:
 
 
 def _circle_circle(a: Edge, b: Edge, tolerance: float) -> list[complex]:
-    ca, cb = _centre(a), _centre(b)
+    ca, cb = a.hub, b.hub
     d = abs(cb - ca)
     if d <= tolerance:  # concentric: the same circle or no common point
         return []
@@ -180,12 +206,6 @@ def _circle_circle(a: Edge, b: Edge, tolerance: float) -> list[complex]:
     return [ca + complex(along, -half) * u, ca + complex(along, half) * u]
 
 
-def _centre(arc: Edge) -> complex:
-    if arc.centre is None:
-        raise TypeError("a line has no centre")
-    return arc.centre
-
-
 def winding(loop: Sequence[Edge], z: Complexes) -> NDArray[np.int_]:
     """Return how often a closed loop of edges runs counter-clockwise around points (n,) that do not lie on it.
 
@@ -198,5 +218,7 @@ def winding(loop: Sequence[Edge], z: Complexes) -> NDArray[np.int_]:
         if edge.centre is not None:
             chord, w = edge.end - edge.start, z - edge.start
             side = (chord.real * w.imag - chord.imag * w.real) * math.copysign(1.0, edge.sweep)
-            turn += np.where((np.abs(z - edge.centre) < edge.radius) & (side < 0.0), math.copysign(2.0 * math.pi, edge.sweep), 0.0)
+            turn += np.where(
+                (np.abs(z - edge.centre) < edge.radius) & (side < 0.0), math.copysign(2.0 * math.pi, edge.sweep), 0.0
+            )
     return np.asarray(np.rint(turn / (2.0 * math.pi)), dtype=np.int_)

@@ -14,10 +14,10 @@ from fem.record import Record
 def write_fields(record: Record, folder: Path) -> Path:
     """Write temperatures as ``fields.pvd`` with one VTU file an instant, and ``extremes.vtu``.
 
-    Coordinates are in the docket's length unit, the PVD's times in its time unit. Each frame holds the temperature
-    at the nodes and the region's index, the cell's peak temperature and its doubt as cell data; ``extremes.vtu``
-    holds highest, lowest and the time of the highest at the nodes. A quick look has no doubt, and its files none
-    either. The folder appears whole or not at all.
+    Coordinates are in the docket's length unit, the PVD's times in its time unit. Each frame holds the temperature at
+    the nodes, in single precision, and the region's index of each cell. ``extremes.vtu`` holds highest, lowest and the
+    time of the highest at the nodes, and of each cell its peak and its doubt; a quick look has no doubt, and its file
+    neither. The folder appears whole or not at all.
 
     Raises
     ------
@@ -27,31 +27,32 @@ def write_fields(record: Record, folder: Path) -> Path:
     writer, fields, mesh = Writer.of(record), record.fields, record.mesh
     heat, clock = writer.scale("temperature"), writer.scale("time")
     unit = heat.unit
-    cells = {"region": mesh.region.astype(np.int32), f"peak [{unit}]": heat.out(fields.peak[mesh.cells].max(axis=1))}
+    region = {"region": mesh.region.astype(np.int32)}
+    cells = {**region, f"peak [{unit}]": heat.out(fields.peak[mesh.cells].max(axis=1))}
     if np.isfinite(fields.doubt).all():
         cells[f"doubt [{heat.step_unit.removeprefix('delta_')}]"] = heat.step(fields.doubt)
     nodes = {f"highest [{unit}]": heat.out(fields.peak), f"lowest [{unit}]": heat.out(fields.low)}
     if not record.steady:
         nodes[f"time of highest [{clock.unit}]"] = clock.out(fields.peak_time)
+    shape = (_points(record, writer), [("triangle", mesh.cells.astype(np.int32))])
     with whole_folder(folder) as draft:
         names = []
         for i, T in enumerate(fields.T):
             names.append(f"frame-{i:04d}.vtu")
-            _vtu(record, writer, draft / names[-1], {f"temperature [{unit}]": heat.out(T)}, cells)
-        _vtu(record, writer, draft / "extremes.vtu", nodes, cells)
+            _vtu(draft / names[-1], *shape, {f"temperature [{unit}]": heat.out(T).astype(np.float32)}, region)
+        _vtu(draft / "extremes.vtu", *shape, nodes, cells)
         (draft / "fields.pvd").write_text(_index(record, names, clock), encoding="utf-8")
     return folder
 
 
 def _vtu(
-    record: Record, writer: Writer, path: Path, nodes: dict[str, np.ndarray], cells: dict[str, np.ndarray]
+    path: Path,
+    points: np.ndarray,
+    blocks: list[tuple[str, np.ndarray]],
+    nodes: dict[str, np.ndarray],
+    cells: dict[str, np.ndarray],
 ) -> None:
-    mesh = meshio.Mesh(
-        _points(record, writer),
-        [("triangle", record.mesh.cells)],
-        point_data=nodes,
-        cell_data={k: [v] for k, v in cells.items()},
-    )
+    mesh = meshio.Mesh(points, blocks, point_data=nodes, cell_data={name: [values] for name, values in cells.items()})
     mesh.write(path, file_format="vtu", binary=True, compression="zlib")
 
 

@@ -1,4 +1,4 @@
-"""Links with a left and a right -> faces: connected pieces of one region, each with its outer loop and the loops of its holes."""
+"""Links with a left and a right -> faces: connected pieces of one region, each with the loops around it and its holes."""
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
@@ -29,7 +29,7 @@ def directed(link: Link, *, forward: bool) -> Edge:
 
 
 def walk(links: Sequence[Link], nodes: Complexes) -> list[Loop]:
-    """Return every loop that keeps a face to its left; counter-clockwise ones bound a face from outside, the others are its holes.
+    """Return every loop that keeps a face to its left: counter-clockwise around a face, clockwise around a hole.
 
     Raises
     ------
@@ -57,7 +57,7 @@ def walk(links: Sequence[Link], nodes: Complexes) -> list[Loop]:
 def _around(links: Sequence[Link], nodes: Complexes) -> Iterator[tuple[int, list[Half], Floats]]:
     """Yield each node with the halves that leave it, counter-clockwise, and their directions, rad.
 
-    Seen at one small distance from the node, arcs that leave along one tangent are apart, in the order of their curvature.
+    Seen at one small distance from the node, arcs that leave along one tangent are apart, in the order of curvature.
     """
     leaving: dict[int, list[Half]] = {}
     for i, link in enumerate(links):

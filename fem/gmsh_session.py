@@ -49,7 +49,7 @@ def gmsh_session() -> Iterator[Gmsh]:
     pygmsh, gmsh = load()
     with _LOCK:
         if gmsh.isInitialized():
-            raise MeshError("gmsh is open in this process already, and its model would be lost: call gmsh.finalize() first")
+            raise MeshError("gmsh is open in this process, and its model would be lost: call gmsh.finalize() first")
         geometry = pygmsh.geo.Geometry()
         try:
             _open(geometry, gmsh)
@@ -65,8 +65,8 @@ def gmsh_session() -> Iterator[Gmsh]:
                 geometry.__exit__(None, None, None)
 
 
-def _open(geometry: Any, gmsh: ModuleType) -> None:
-    """Enter pygmsh's geometry without its signal handler, which only the main thread may set, and without the user's gmsh settings."""
+def _open(geometry: Any, gmsh: Any) -> None:
+    """Enter pygmsh's geometry without its signal handler (only the main thread may set one) and the user's settings."""
     initialize = gmsh.initialize
     gmsh.initialize = lambda argv: initialize(argv, readConfigFiles=False, interruptible=False)
     try:

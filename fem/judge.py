@@ -1,10 +1,11 @@
 """Hold a study against what was asked: bands against the wanted ones, limits against bands, checks against the data."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from fem.bands import NARROWEST
 from fem.checks import check_all
 from fem.checks.facts import Facts, Goal, Namer, RegionStock
 from fem.docket import Docket
@@ -17,10 +18,6 @@ from fem.run import Gauges
 from fem.study import Study
 from fem.tables import figures
 from fem.verdicts import Verdict
-
-NARROWEST = 0.02
-"""A limit is not chased below this part of the wanted band."""
-
 
 @dataclass(frozen=True)
 class Need:
@@ -65,8 +62,13 @@ class Judgement:
 
     @property
     def settled(self) -> bool:
-        """True when every wanted band is reached and every limit settled."""
-        return all(need.total <= 1.0 for need in self.needs)
+        """True when every wanted band is reached, every limit settled, and errors fall as theory says."""
+        return all(need.total <= 1.0 for need in self.needs) and not self.restless
+
+    @property
+    def restless(self) -> bool:
+        """True when differences between meshes do not shrink: a finer mesh must show whether they ever do."""
+        return any(finding.check == "order" and finding.blocks for finding in self.findings)
 
 
 def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
@@ -94,6 +96,7 @@ def judge(
     """Return figures, verdicts, findings and needs of a study."""
     table = figures(study, problem, derived(docket))
     goals = wanted_goals(docket, table)
+    table = no_narrower(table, goals)
     verdicts = tuple(judge_limit(docket, limit, table) for limit in docket.limits)
     floor = NARROWEST * float(docket.wanted.gauges)
     asked = [closing_goal(docket, limit, v, floor) for limit, v in zip(docket.limits, verdicts, strict=True)]
@@ -101,6 +104,15 @@ def judge(
     facts = Facts(study, problem, table, gauges, tuple(goals), stocks, names)
     needs = sorted((need_of(goal, table) for goal in goals), key=lambda need: -need.total)
     return Judgement(table, verdicts, check_all(facts), tuple(needs))
+
+
+def no_narrower(table: Figures, goals: list[Goal]) -> Figures:
+    """Return the figures with no band narrower than `NARROWEST` times the wanted one; the difference goes to the space part."""
+    space = table.space.copy()
+    for goal in goals:
+        i = table.row(goal.key)
+        space[i] = np.maximum(space[i], NARROWEST * goal.wanted - table.time[i])
+    return replace(table, space=space)
 
 
 def need_of(goal: Goal, table: Figures) -> Need:

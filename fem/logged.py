@@ -14,7 +14,7 @@ from fem.logs import Samples, Wanted
 from fem.polyline import thin
 from fem.schedule_base import Difference, Knotted
 from fem.strict import fault, raise_all, raise_one
-from fem.units import PositiveDuration, Quantity, Reading, reading, scale_of
+from fem.units import Number, PositiveDuration, Quantity, Reading, reading, scale_of
 
 Floats = NDArray[np.float64]
 
@@ -34,9 +34,7 @@ class Log(Knotted):
     unit: str | None = Field(
         None, description="Unit of the values; the unit of a bare number at this place by default."
     )
-    scale: float = Field(
-        1.0, gt=-1e9, lt=1e9, description="Factor, of no unit, on the values in their unit; not for temperatures."
-    )
+    scale: Number = Field(1.0, description="Factor, of no unit, on the values in their unit; not for temperatures.")
     jumps: bool = Field(
         default=False, description="Whether a time that is given twice is a jump; otherwise it is refused."
     )

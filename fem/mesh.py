@@ -1,7 +1,11 @@
 """A plan -> a triangle mesh of it, graded by thickness and by arcs, and verified against the plan."""
 
+from collections.abc import Sequence
+
 import numpy as np
 
+from fem.arc_room import cramped
+from fem.chords import clear_of_each_other, halved
 from fem.edge import Complexes
 from fem.errors import MeshError
 from fem.gmsh_session import gmsh_session
@@ -9,9 +13,12 @@ from fem.mesh_data import Floats, Ints, Mesh
 from fem.mesh_draw import Drawer, Gauged, Raw
 from fem.mesh_size import SizeField
 from fem.mesh_verify import verify
-from fem.section import Plan
+from fem.plan import Plan
 
 __all__ = ["Mesh", "make_mesh"]
+
+ROUNDS = 12
+"""Of halving chords of arcs that leave refinement no room; few sections need one."""
 
 
 def make_mesh(plan: Plan, *, across: int = 4, finer: float = 1.0, gauges: Floats | None = None) -> Mesh:
@@ -25,8 +32,8 @@ def make_mesh(plan: Plan, *, across: int = 4, finer: float = 1.0, gauges: Floats
     finer : float
         All cell sizes are divided by it.
     gauges : (n, 2) float, optional
-        Points that become nodes, m. One that is too near to a curve, to the end of a curve or to another gauge for well-shaped cells is
-        left out, and its value is then interpolated.
+        Points that become nodes, m. One that is too near to a curve, to the end of a curve or to another gauge for
+        well-shaped cells is left out, and its value is then interpolated.
 
     Raises
     ------
@@ -40,14 +47,29 @@ def make_mesh(plan: Plan, *, across: int = 4, finer: float = 1.0, gauges: Floats
     sizes = SizeField(plan, across=across, finer=finer)
     points = np.zeros((0, 2)) if gauges is None else np.asarray(gauges, dtype=np.float64).reshape(-1, 2)
     gauged = Gauged(plan, sizes, points[:, 0] + 1j * points[:, 1])
+    fractions = [sizes.divided(i, gauged.on[i]) for i in range(len(plan.curves))]
+    for _ in range(ROUNDS):
+        fractions = clear_of_each_other(plan.curves, fractions)
+        mesh = _filled(plan, sizes, fractions, gauged.inside)
+        long = cramped(mesh)
+        if not long.any():
+            verify(mesh)
+            return mesh
+        fractions = halved(fractions, long)
+    x, y = mesh.points[mesh.facets[long][0]].mean(axis=0)
+    raise MeshError(
+        f"cells beside an arc at x = {x:.6g} m, y = {y:.6g} m would be crushed by refinement, however short its chords"
+    )
+
+
+def _filled(plan: Plan, sizes: SizeField, fractions: Sequence[Floats], inside: Sequence[Sequence[complex]]) -> Mesh:
+    """Return the mesh with the given nodes on its curves."""
     with gmsh_session() as gmsh:
         drawer = Drawer(gmsh, plan, sizes)
-        drawn = drawer.draw(gauged)
+        drawn = drawer.draw(fractions, inside)
         drawer.generate()
         raw = drawer.read(drawn)
-    mesh = _mesh(plan, raw)
-    verify(mesh)
-    return mesh
+    return _mesh(plan, raw)
 
 
 def _mesh(plan: Plan, raw: Raw) -> Mesh:

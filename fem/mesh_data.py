@@ -6,7 +6,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.section import Plan
+from fem.plan import Plan
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]

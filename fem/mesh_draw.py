@@ -1,33 +1,48 @@
 """A plan drawn in gmsh, and the mesh read back entity by entity.
 
-pygmsh's own conversion shifts the tags of triangles when curves and surfaces are both tagged (7.1.17 with gmsh 4.15): nothing here uses it.
+pygmsh's own conversion shifts the tags of triangles when curves and surfaces are both tagged (7.1.17 with gmsh 4.15):
+nothing here uses it.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.chords import clear_of_each_other
-from fem.edge import Complexes, Edge, winding
+from fem.edge import Complexes, Edge, Floats, winding
 from fem.errors import MeshError
 from fem.gmsh_session import Gmsh
 from fem.mesh_size import SizeField
-from fem.section import Plan
+from fem.plan import Plan
 
 Ints = NDArray[np.int64]
 
 ON_CURVE = 1e-6
 """A gauge nearer to a curve than this part of the section's size lies on it."""
 CLEAR = 0.5
-"""A gauge becomes a node only if it keeps this many cell sizes from curves' ends, from other gauges and (unless it is on one) from curves."""
+"""Cell sizes that a gauge keeps from ends of curves, from other gauges and (unless it is on one) from curves; one that
+does not becomes no node."""
 FRONTAL_DELAUNAY = 6
 
 
 @dataclass(frozen=True)
 class Drawn:
-    """gmsh's tags of what was drawn: the exact place of each point tag, the two point tags of each chord and its curve, the faces' surfaces."""
+    """What was drawn, by gmsh's tags.
+
+    Attributes
+    ----------
+    points : dict
+        Exact place of each point tag, m.
+    facets : (F, 2) int
+        Point tags of each chord.
+    curve : (F,) int
+        Curve of each chord.
+    surfaces : list of int
+        Surface tag of each face.
+    """
 
     points: dict[int, complex]
     facets: Ints
@@ -79,7 +94,7 @@ def _edge(plan: Plan, half: tuple[int, bool]) -> Edge:
 class Drawer:
     """Draws in a frame in which the section has the size 1, since gmsh's tolerances are absolute.
 
-    Curves are drawn as the chords between their nodes, which thus lie on lines and arcs exactly; gmsh fills the faces between them.
+    Curves are drawn as the chords between their nodes, which thus lie on lines and arcs exactly; gmsh fills the faces.
     """
 
     def __init__(self, gmsh: Gmsh, plan: Plan, sizes: SizeField) -> None:
@@ -95,32 +110,34 @@ class Drawer:
             self._points[z] = self._geometry.add_point([w.real, w.imag, 0.0])
         return self._points[z]
 
-    def draw(self, gauged: Gauged) -> Drawn:
-        """Draw all curves as chords, and all faces."""
-        wanted = [self._sizes.divided(i, gauged.on[i]) for i in range(len(self._plan.curves))]
-        fractions = clear_of_each_other(self._plan.curves, wanted)
-        chords = [self._chords(curve.edge.at(f)) for curve, f in zip(self._plan.curves, fractions, strict=True)]
-        facets = [(p.points[0]._id, p.points[1]._id) for part in chords for p in part]
-        curve = np.repeat(np.arange(len(chords)), [len(part) for part in chords])
-        surfaces, embedded = [], []
-        for k, face in enumerate(self._plan.faces):
-            loops = []
-            for loop in face.loops:
-                walk = [p for i, forward in loop for p in (chords[i] if forward else [-chord for chord in reversed(chords[i])])]
-                loops.append(self._geometry.add_curve_loop(walk))
-            surfaces.append(self._geometry.add_plane_surface(loops[0], loops[1:])._id)
-            embedded += [(self._point(z)._id, surfaces[-1]) for z in gauged.inside[k]]
+    def draw(self, fractions: Sequence[Floats], inside: Sequence[Sequence[complex]]) -> Drawn:
+        """Draw all curves as chords between nodes at fractions, and all faces with the given points inside."""
+        chords, facets = [], []
+        for curve, f in zip(self._plan.curves, fractions, strict=True):
+            points = [self._point(complex(z)) for z in curve.edge.at(f)]
+            chords.append([self._geometry.add_line(a, b)._id for a, b in pairwise(points)])
+            facets += [(a._id, b._id) for a, b in pairwise(points)]
+        curve_of = np.repeat(np.arange(len(chords)), [len(part) for part in chords])
+        surfaces = [self._surface(face.loops, chords) for face in self._plan.faces]
+        embedded = [
+            (self._point(z)._id, surface) for surface, points in zip(surfaces, inside, strict=True) for z in points
+        ]
         self._geometry.synchronize()
-        for part in chords:
-            for chord in part:
-                self._gmsh.model.mesh.setTransfiniteCurve(chord._id, 2)
+        for chord in (chord for part in chords for chord in part):
+            self._gmsh.model.mesh.setTransfiniteCurve(chord, 2)
         for point, surface in embedded:
             self._gmsh.model.mesh.embed(0, [point], 2, surface)
         exact = {point._id: z for z, point in self._points.items()}
-        return Drawn(exact, np.array(facets), curve, surfaces)
+        return Drawn(exact, np.array(facets), curve_of, surfaces)
 
-    def _chords(self, z: Complexes) -> list[Any]:
-        return [self._geometry.add_line(self._point(complex(a)), self._point(complex(b))) for a, b in zip(z[:-1], z[1:], strict=True)]
+    def _surface(self, loops: Sequence[Sequence[tuple[int, bool]]], chords: Sequence[Sequence[int]]) -> int:
+        """Return the tag of a face (pygmsh would copy every line that is run backwards)."""
+        geo = self._geometry.env
+        walks = [
+            [tag for i, forward in loop for tag in (chords[i] if forward else [-t for t in reversed(chords[i])])]
+            for loop in loops
+        ]
+        return int(geo.addPlaneSurface([geo.addCurveLoop(walk) for walk in walks]))
 
     def generate(self) -> None:
         """Let gmsh mesh what was drawn."""
@@ -155,5 +172,7 @@ class Drawer:
         kinds, _, nodes = self._gmsh.model.mesh.getElements(2, surface)
         if not len(kinds):
             name = self._plan.region_names[self._plan.faces[face].region]
-            raise MeshError(f'gmsh did not fill a part of region "{name}"; its last message: {self._gmsh.logger.getLastError() or "none"}')
+            raise MeshError(
+                f'gmsh did not fill a part of region "{name}"; it said: {self._gmsh.logger.getLastError() or "nothing"}'
+            )
         return np.asarray(np.concatenate(nodes), dtype=np.int64)

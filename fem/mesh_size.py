@@ -1,15 +1,16 @@
-"""How large a cell may be where: a fraction of the local thickness, at most 1/24 of an arc's full circle, growing slowly in between."""
+"""How large a cell may be where: a part of the local thickness, 1/24 of a circle on arcs, growing slowly in between."""
 
 import math
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
 from fem.edge import Complexes, Edge, Floats
 from fem.faces import sectors
+from fem.plan import Plan
 from fem.rays import hits
-from fem.section import Plan
 
 Ints = NDArray[np.int64]
 
@@ -20,7 +21,7 @@ LARGEST = 0.1
 GROWTH = 0.3
 """Growth of the cell size per distance: neighbouring cells differ by about this part."""
 TIP = 0.3
-"""Towards the tip of a wedge, the thickness counts as no less than this part of the wedge's greatest one: a tip has none."""
+"""Towards the tip of a wedge thickness counts as no less than this part of the wedge's greatest one: a tip has none."""
 REENTRANT = math.radians(190.0)
 FAN = math.radians(15.0)
 """From a re-entrant corner, thickness is looked for in directions this far apart."""
@@ -53,7 +54,8 @@ class SizeField:
         self._largest = LARGEST * plan.size / finer
         self.nodes, self.links = plan.links()
         self._of_region = [
-            [i for i, link in enumerate(self.links) if r in (link.left, link.right)] for r in range(len(plan.region_names))
+            [i for i, link in enumerate(self.links) if r in (link.left, link.right)]
+            for r in range(len(plan.region_names))
         ]
         self._ends = np.array([(link.a, link.b) for link in self.links])
         self._widest: dict[tuple[int, int], float] = {}
@@ -67,7 +69,7 @@ class SizeField:
         return min(self._largest, self._bins.smallest(z))
 
     def divided(self, curve: int, splits: Sequence[float]) -> Floats:
-        """Return the fractions at which a curve gets nodes, from 0 to 1: the splits, and between them pieces as long as wanted there.
+        """Return the fractions at which a curve gets nodes: 0, 1, the splits, and between them as many as wanted.
 
         Between two splits nodes are set at equal steps of the integral of ds/size.
         """
@@ -75,7 +77,7 @@ class SizeField:
         mine = self._f[self._curve == curve]
         cuts = [0.0, *sorted(splits), 1.0]
         fractions = [np.zeros(1)]
-        for start, end in zip(cuts[:-1], cuts[1:], strict=True):
+        for start, end in pairwise(cuts):
             inner = mine[(mine > start) & (mine < end)]
             f = np.unique(np.concatenate(([start], inner, [0.5 * (start + end)], [end])))
             density = edge.length / np.array([self.at(complex(z)) for z in edge.at(f)])
@@ -87,23 +89,31 @@ class SizeField:
         return np.concatenate(fractions)
 
     def _along_curves(self) -> tuple[Ints, Floats, Complexes, Floats]:
-        """Return curve, fraction, point and size of samples on all curves, so close that no size between two neighbours is missed."""
+        """Return curve, fraction, point and size of samples on all curves, so close that none misses a size."""
         curve = np.concatenate([np.full(self._first_count(link.edge), i) for i, link in enumerate(self.links)])
         f = np.concatenate([(np.arange(n) + 0.5) / n for n in (self._first_count(link.edge) for link in self.links)])
         z, size = self._sampled(curve, f)
         while len(f) < MOST_SAMPLES:
             order = np.lexsort((f, curve))
             curve, f, z, size = curve[order], f[order], z[order], size[order]
-            length = np.array([link.edge.length for link in self.links])[curve[:-1]]
-            gap = (f[1:] - f[:-1]) * length
-            wide = np.flatnonzero((curve[1:] == curve[:-1]) & (gap > SPACING * np.minimum(size[1:], size[:-1])))
-            if not len(wide):
+            more_curve, more_f = self._between(curve, f, size)
+            if not len(more_f):
                 break
-            more_curve, more_f = curve[wide], 0.5 * (f[wide] + f[wide + 1])
             more_z, more_size = self._sampled(more_curve, more_f)
             curve, f = np.concatenate((curve, more_curve)), np.concatenate((f, more_f))
             z, size = np.concatenate((z, more_z)), np.concatenate((size, more_size))
         return curve, f, z, size
+
+    def _between(self, curve: Ints, f: Floats, size: Floats) -> tuple[Ints, Floats]:
+        """Return where samples, sorted along their curves, are too far from the next one or from their curve's end."""
+        length = np.array([link.edge.length for link in self.links])[curve]
+        reach = SPACING * size / length
+        same = curve[1:] == curve[:-1]
+        wide = np.flatnonzero(same & (f[1:] - f[:-1] > np.minimum(reach[1:], reach[:-1])))
+        first = np.flatnonzero(np.concatenate(([True], ~same)) & (2.0 * f > reach))
+        last = np.flatnonzero(np.concatenate((~same, [True])) & (2.0 * (1.0 - f) > reach))
+        places = np.concatenate((0.5 * (f[wide] + f[wide + 1]), 0.5 * f[first], 0.5 * (1.0 + f[last])))
+        return np.concatenate((curve[wide], curve[first], curve[last])), places
 
     @staticmethod
     def _first_count(edge: Edge) -> int:
@@ -122,7 +132,9 @@ class SizeField:
             for region, members in enumerate(self._of_region):
                 mine = np.flatnonzero(side == region)
                 if len(mine):
-                    thickness, hit = hits(z[mine], inward * tangent[mine], [self.links[m].edge for m in members], 1e-7 * self._plan.size)
+                    thickness, hit = hits(
+                        z[mine], inward * tangent[mine], [self.links[m].edge for m in members], 1e-7 * self._plan.size
+                    )
                     struck = np.array(members)[hit]
                     thickness = self._without_tips(curve[mine], struck, thickness)
                     size[mine] = np.minimum(size[mine], thickness / (self._across * self._finer))
@@ -148,14 +160,22 @@ class SizeField:
             turn = np.arange(0.5 * math.pi, sector.angle - 0.5 * math.pi + 1e-9, FAN)
             start = np.full(len(turn), self.nodes[sector.node])
             members = self._of_region[sector.owner]
-            thickness, _ = hits(start, np.exp(1j * (sector.begins + turn)), [self.links[m].edge for m in members], 1e-7 * self._plan.size)
+            thickness, _ = hits(
+                start,
+                np.exp(1j * (sector.begins + turn)),
+                [self.links[m].edge for m in members],
+                1e-7 * self._plan.size,
+            )
             z.append(complex(self.nodes[sector.node]))
             size.append(float(thickness.min()) / (self._across * self._finer))
         return np.array(z, dtype=np.complex128), np.array(size)
 
 
 class _Bins:
-    """Answers min(size + GROWTH * distance) over the samples quickly: each box of a raster keeps the samples that can be the smallest."""
+    """Answers min(size + GROWTH * distance) over the samples quickly.
+
+    Each box of a raster keeps the samples that can give the smallest value somewhere in it.
+    """
 
     def __init__(self, z: Complexes, size: Floats, extent: float) -> None:
         self._z, self._size = z, size

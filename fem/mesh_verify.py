@@ -1,4 +1,4 @@
-"""Does a mesh agree with the plan that it was made for? Every cell's region and every facet's curve, by area, length and neighbours."""
+"""Whether a mesh agrees with its plan: every cell's region and every facet's curve, by area, length and neighbours."""
 
 import numpy as np
 from numpy.typing import NDArray
@@ -47,7 +47,9 @@ def _check_cells(mesh: Mesh) -> None:
     worst = int(np.argmin(mesh.areas))
     if mesh.areas[worst] <= 0.0:
         x, y = mesh.points[mesh.cells[worst]].mean(axis=0)
-        raise MeshError(f"cell {worst} at x = {x:.6g} m, y = {y:.6g} m is inverted: its area is {mesh.areas[worst]:.3g} m2")
+        raise MeshError(
+            f"cell {worst} at x = {x:.6g} m, y = {y:.6g} m is inverted: its area is {mesh.areas[worst]:.3g} m2"
+        )
     used = np.bincount(mesh.cells.ravel(), minlength=len(mesh.points))
     if used.min() == 0:
         raise MeshError(f"{np.count_nonzero(used == 0)} nodes belong to no cell")
@@ -57,14 +59,18 @@ def _check_curves(mesh: Mesh) -> None:
     """Compare each curve's length with that of the arcs over its facets, and see that the facets' ends lie on it."""
     curves = mesh.plan.curves
     if len(mesh.curve) != len(mesh.facets) or mesh.curve.min(initial=0) < 0 or mesh.curve.max(initial=0) >= len(curves):
-        raise MeshError(f"the mesh has {len(mesh.facets)} facets, of which not each lies on one of {len(curves)} curves")
+        raise MeshError(
+            f"the mesh has {len(mesh.facets)} facets, of which not each lies on one of {len(curves)} curves"
+        )
     radius = np.array([curve.radius for curve in curves])[mesh.curve]
     along = np.where(radius > 0.0, radius * _angles(mesh, radius), mesh.facet_lengths)
     total = np.bincount(mesh.curve, weights=along, minlength=len(curves))
     for i, curve in enumerate(curves):
         if abs(total[i] - curve.length) > AGREES * curve.length:
             names = ", ".join(sorted(curve.labels))
-            raise MeshError(f"the curve {names} is {curve.length:.12g} m long in the section and {total[i]:.12g} m in the mesh")
+            raise MeshError(
+                f"the curve {names} is {curve.length:.12g} m long in the section and {total[i]:.12g} m in the mesh"
+            )
         nodes = mesh.points[mesh.facets[mesh.curve == i].ravel()]
         off = curve.edge.distance(nodes[:, 0] + 1j * nodes[:, 1]).max()
         if off > AGREES * mesh.plan.size:
@@ -104,7 +110,9 @@ def _check_sides(mesh: Mesh) -> None:
     across = _owner(key, owner, (end * n + start)[order])
     changes = np.count_nonzero(across == -1) + np.count_nonzero((across != owner) & (across >= 0)) // 2
     if changes != len(mesh.facets):
-        raise MeshError(f"the region changes across {changes} facets of the mesh, and {len(mesh.facets)} of them lie on curves")
+        raise MeshError(
+            f"the region changes across {changes} facets of the mesh, and {len(mesh.facets)} of them lie on curves"
+        )
 
 
 def _owner(key: NDArray[np.int64], owner: NDArray[np.int64], wanted: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -1,5 +1,7 @@
-"""Places narrower than the gap tolerance: hair-thin parts of a face, and gaps between faces. Found by opening and closing in the
-sense of mathematical morphology (Serra, Image Analysis and Mathematical Morphology, 1982, ch. II) with a disc as wide as the tolerance.
+"""Places narrower than the gap tolerance: hair-thin parts of a face, and gaps between faces.
+
+Found by an opening, in the sense of mathematical morphology (Serra, Image Analysis and Mathematical Morphology, 1982,
+ch. II), with a disc as wide as the tolerance.
 """
 
 from collections.abc import Sequence
@@ -11,16 +13,22 @@ from shapely.geometry.base import BaseGeometry
 
 from fem.edge import Complexes, Floats
 from fem.faces import Loop, sectors
-from fem.partition import NOBODY, Link
+from fem.partition import NOBODY, SAME_POINT, Link
 
 SHARP = np.deg2rad(45.0)
-"""Inside a corner sharper than this an opening takes away more than a rounding of the corner, though nothing is hair-thin."""
+"""In a corner sharper than this an opening takes away more than a rounding, though nothing is hair-thin."""
 HAIR = np.deg2rad(0.5)
 """A corner of straight sides sharper than this is a hair, not a corner; common practice, no source."""
 ROUNDING = 2.0
 """An opening rounds corners of `SHARP` and more over less than so many tolerances; what is longer is thin."""
 FACING = -0.5
 """Two links face each other when the cosine between their inward normals is below this."""
+MARGIN = 0.01
+"""Of the tolerance; shapely's buffers are exact to about this part of their width."""
+BETWEEN = 1e-3
+"""A place lies between two links when it keeps this part of their distance from each; else it is rounding along one."""
+PLACES = 30
+"""Places of a narrow part that are tried."""
 
 
 @dataclass(frozen=True)
@@ -48,9 +56,12 @@ class Spot:
 class Shapes:
     """The faces as polygons whose chords follow the arcs far closer than the tolerance."""
 
-    def __init__(self, links: Sequence[Link], nodes: Complexes, nested: Sequence[tuple[Loop, list[Loop]]], tolerance: float) -> None:
+    def __init__(
+        self, links: Sequence[Link], nodes: Complexes, nested: Sequence[tuple[Loop, list[Loop]]], tolerance: float
+    ) -> None:
         self.links, self.nodes, self.tolerance = links, nodes, tolerance
         size = max(float(np.ptp(nodes.real)), float(np.ptp(nodes.imag)))
+        self._same = SAME_POINT * size
         self._traces = [link.edge.polyline(max(tolerance / 50.0, 1e-7 * size)) for link in links]
         self.faces = [(outer.owner, self._polygon(outer, holes)) for outer, holes in nested]
         self._sharp: dict[int, list[complex]] = {}
@@ -68,37 +79,56 @@ class Shapes:
 
     def thin(self) -> list[Spot]:
         """Return where faces are narrower than the tolerance."""
-        spots = []
-        for owner, polygon in self.faces:
-            opened = polygon.buffer(-0.5 * self.tolerance).buffer(0.5 * self.tolerance)
-            spots += self._spots(polygon.difference(opened), owner)
-        return spots
+        return [spot for owner, polygon in self.faces for spot in self._spots(self._narrow(polygon), owner)]
 
     def gaps(self) -> list[Spot]:
-        """Return where faces are apart, but by less than the tolerance."""
+        """Return where faces are apart, but by less than the tolerance: where what lies around them is narrow."""
         whole = shapely.union_all([polygon for _, polygon in self.faces])
-        closed = whole.buffer(0.5 * self.tolerance).buffer(-0.5 * self.tolerance)
-        return self._spots(closed.difference(whole), NOBODY)
+        frame = shapely.box(*whole.bounds).buffer(10.0 * self.tolerance, join_style="mitre")
+        return self._spots(self._narrow(frame.difference(whole)), NOBODY)
+
+    def _narrow(self, polygon: BaseGeometry) -> BaseGeometry:
+        """Return what an opening takes away, without the rounding that it leaves along the rest."""
+        opened = polygon.buffer(-0.5 * self.tolerance).buffer(0.5 * self.tolerance)
+        return polygon.difference(opened.buffer(MARGIN * self.tolerance))
 
     def _spots(self, lost: BaseGeometry, owner: int) -> list[Spot]:
         """Return the parts that are longer than a rounded corner and lie between two links that face each other."""
         spots = []
         for part in shapely.get_parts(lost):
             x0, y0, x1, y1 = part.bounds
-            if np.hypot(x1 - x0, y1 - y0) <= ROUNDING * self.tolerance:
+            long = float(np.hypot(x1 - x0, y1 - y0))
+            if long <= ROUNDING * self.tolerance or part.area <= 0.1 * self._same * long:
                 continue
-            if any(part.distance(shapely.Point(z.real, z.imag)) <= 0.5 * self.tolerance for z in self._sharp.get(owner, ())):
+            if any(
+                part.distance(shapely.Point(z.real, z.imag)) <= 0.5 * self.tolerance for z in self._sharp.get(owner, ())
+            ):
                 continue
-            point = part.representative_point()
-            z = complex(point.x, point.y)
-            sides = self._sides(z, owner)
-            if len(sides) == 2:  # otherwise only rounding along one link
-                spots.append(Spot(owner, z, sum(self._distance(i, z) for i in sides), sides))
+            spots += self._spot(part, owner)
         return spots
+
+    def _spot(self, part: BaseGeometry, owner: int) -> list[Spot]:
+        """Return the largest place in a part that lies between two links, if any: its ends may be rounded corners."""
+        triangles = shapely.get_parts(shapely.delaunay_triangles(part))
+        triangles = triangles[np.argsort(-shapely.area(triangles))]
+        places = shapely.centroid(triangles)
+        for place in places[shapely.intersects(part, places)][:PLACES]:
+            z = complex(place.x, place.y)
+            sides = self._sides(z, owner)
+            if len(sides) < 2:
+                continue
+            apart = [self._distance(i, z) for i in sides]
+            if sum(apart) > self._same and min(apart) > BETWEEN * sum(apart):
+                return [Spot(owner, z, sum(apart), sides)]
+        return []
 
     def _sides(self, z: complex, owner: int) -> tuple[int, ...]:
         """Return the nearest link of the owner within the tolerance, and the nearest one that faces it."""
-        near = [i for i, link in enumerate(self.links) if owner in (link.left, link.right) and self._distance(i, z) <= self.tolerance]
+        near = [
+            i
+            for i, link in enumerate(self.links)
+            if owner in (link.left, link.right) and self._distance(i, z) <= self.tolerance
+        ]
         near.sort(key=lambda i: self._distance(i, z))
         if not near:
             return ()

@@ -75,7 +75,7 @@ def digits(value: float, count: int) -> str:
 
 
 def plain(value: float) -> str:
-    """Return a number that is no result (an input, an instant): five significant digits, and every one before the point.
+    """Return a number that is no result (an input, an instant): five digits, and every one before the point.
 
     Examples
     --------
@@ -228,11 +228,6 @@ class Writer:
         """Return a length."""
         scale = self.scale("length")
         return f"{plain(float(scale.out(metres)))} {scale.unit}"
-
-    def step(self, kind: str, difference: float) -> str:
-        """Return a difference that is an input, such as a wanted band."""
-        scale = self.scale(kind)
-        return f"{plain(float(scale.step(difference)))} {sign(scale.step_unit)}"
 
     def place(self, x: float, y: float) -> str:
         """Return a point of the section."""

@@ -38,7 +38,14 @@ def _names(outlines: Sequence[Outline]) -> list[Problem]:
     found = []
     names = [outline.name for outline in outlines]
     for name in sorted({n for n in names if names.count(n) > 1}):
-        found.append(Problem(f'section, name "{name}"', f'"{name}"', "a name of its own for each region and void", "rename one of them"))
+        found.append(
+            Problem(
+                f'section, name "{name}"',
+                f'"{name}"',
+                "a name of its own for each region and void",
+                "rename one of them",
+            )
+        )
     if not any(outline.solid for outline in outlines):
         found.append(Problem("section", "", "at least one region that is not a void", "draw a region with a stock"))
     for outline in outlines:
@@ -57,22 +64,38 @@ def _xy(z: complex) -> tuple[float, float]:
 def _vertices(outline: Outline, tolerance: float) -> list[Problem]:
     n, found = len(outline.vertices), []
     if not np.isfinite(np.array(outline.vertices, dtype=np.float64)).all():
-        return [Problem(outline.place(), "a coordinate that is not a finite number", "finite coordinates", "mend the coordinate")]
+        return [
+            Problem(
+                outline.place(), "a coordinate that is not a finite number", "finite coordinates", "mend the coordinate"
+            )
+        ]
     arcs = sum(edge.via is not None for edge in outline.edges)
     if n < 2 or (n == 2 and arcs == 0):
         allowed = "at least 3 vertices, or 2 when an edge is an arc"
         xy = outline.vertices[0] if n else None
-        found.append(Problem(outline.place(), f"an outline of {n} {'vertex' if n == 1 else 'vertices'}", allowed, "add vertices", xy=xy))
+        found.append(
+            Problem(
+                outline.place(),
+                f"an outline of {n} {'vertex' if n == 1 else 'vertices'}",
+                allowed,
+                "add vertices",
+                xy=xy,
+            )
+        )
         return found
     for i, edge in enumerate(outline.edges):
         start, end = complex(*outline.vertices[i]), complex(*outline.vertices[(i + 1) % n])
         if abs(end - start) <= tolerance:
             hint = "delete one of its two vertices; a full circle is drawn as two arcs"
-            found.append(Problem(outline.place(i), "an edge of no length", "two ends that are apart", hint, xy=_xy(start)))
+            found.append(
+                Problem(outline.place(i), "an edge of no length", "two ends that are apart", hint, xy=_xy(start))
+            )
         elif edge.via is not None and outline.made(i) is None:
             value = f"via point ({edge.via[0]:.6g}, {edge.via[1]:.6g})"
             hint = "move the point off the straight line, or take it away for a straight edge"
-            found.append(Problem(outline.place(i), value, "a point that lies off the line through both ends", hint, xy=edge.via))
+            found.append(
+                Problem(outline.place(i), value, "a point that lies off the line through both ends", hint, xy=edge.via)
+            )
     return found
 
 
@@ -86,7 +109,7 @@ def _crossings(outline: Outline, tolerance: float) -> list[Problem]:
             if np.abs(vertices - z).min() > 10.0 * tolerance:
                 found.append(_crossing(outline, "crosses itself", (i, j), z))
     for i in range(n):
-        for k in np.flatnonzero(chain[i].distance(vertices) <= tolerance):
+        for k in chain[i].near(vertices, tolerance):
             if k not in (i, (i + 1) % n):
                 found.append(_crossing(outline, "touches itself", (i, int(k)), chain[k].start))
     if n == 2 and abs(chain[0].middle - chain[1].middle) <= 10.0 * tolerance:
@@ -96,7 +119,13 @@ def _crossings(outline: Outline, tolerance: float) -> list[Problem]:
 
 def _crossing(outline: Outline, how: str, which: tuple[int, int], z: complex) -> Problem:
     hint = "move or reorder the vertices; draw a hole as a void of its own"
-    return Problem(outline.place(*which), f"an outline that {how}", "edges that meet only at the vertex they share", hint, xy=_xy(z))
+    return Problem(
+        outline.place(*which),
+        f"an outline that {how}",
+        "edges that meet only at the vertex they share",
+        hint,
+        xy=_xy(z),
+    )
 
 
 def _behind_axis(outline: Outline, tolerance: float) -> list[Problem]:
@@ -112,5 +141,9 @@ def _behind_axis(outline: Outline, tolerance: float) -> list[Problem]:
         leftmost = edge.centre - edge.radius
         if leftmost.real < -tolerance and edge.distance(np.array([leftmost]))[0] <= tolerance:
             hint = "flatten the arc or move it to r >= 0"
-            found.append(Problem(outline.place(i), f"an arc that reaches r = {leftmost.real:.6g} m", AXIS, hint, xy=_xy(leftmost)))
+            found.append(
+                Problem(
+                    outline.place(i), f"an arc that reaches r = {leftmost.real:.6g} m", AXIS, hint, xy=_xy(leftmost)
+                )
+            )
     return found

@@ -1,6 +1,6 @@
 """Outlines that lie on each other -> links: pieces of edges that meet only at their ends, with who lies left and right.
 
-The later outline wins wherever outlines overlap. Two points closer than `SAME_POINT` of the section's size are one point.
+The later outline wins wherever outlines overlap. Points closer than `SAME_POINT` of the section's size are one point.
 """
 
 from collections.abc import Sequence
@@ -14,9 +14,9 @@ from fem.outline import Outline, all_edges
 
 SAME_POINT = 1e-9
 """Of the section's size; common practice: far above float64 rounding (1e-16), far below any drawn size."""
-SAME_CURVE = 10.0
+SAME_CURVE = 3.0
 """Pieces with the same ends whose middles are within so many same-point distances are one piece."""
-LOOK_ASIDE = 20.0
+LOOK_ASIDE = 6.0
 """Who lies beside a piece is asked so many same-point distances aside: beyond what `SAME_CURVE` may have merged."""
 NOBODY = -1
 
@@ -88,24 +88,20 @@ def divide(outlines: Sequence[Outline], points: Sequence[complex], size: float) 
     for a, b in near_pairs([edge for _, _, edge in edges], tolerance):
         for z in crossings(edges[a][2], edges[b][2], tolerance):
             nodes.add(z)
-    z = np.array(nodes.points)
+    points_found = np.array(nodes.points)
     links: dict[tuple[int, int], list[Link]] = {}
     for outline, position, edge in edges:
-        for piece in _pieces(edge, z, tolerance):
+        for piece in _pieces(edge, points_found, tolerance):
             _note(links, piece, (outline, position), SAME_CURVE * tolerance)
     found = [link for group in links.values() for link in group]
     _ask_aside(outlines, found, LOOK_ASIDE * tolerance)
-    return z, found
+    return points_found, found
 
 
 def near_pairs(edges: Sequence[Edge], tolerance: float) -> list[tuple[int, int]]:
     """Return the pairs of edges whose boxes touch."""
-    lo, hi = np.empty((len(edges), 2)), np.empty((len(edges), 2))
-    for i, edge in enumerate(edges):
-        z = np.array([edge.start, edge.end])
-        if edge.centre is not None:  # the whole circle's box: generous, and simple
-            z = edge.centre + edge.radius * np.array([-1 - 1j, 1 + 1j])
-        lo[i], hi[i] = (z.real.min(), z.imag.min()), (z.real.max(), z.imag.max())
+    boxes = np.array([edge.box() for edge in edges])
+    lo, hi = (np.column_stack((corner.real, corner.imag)) for corner in boxes.T)
     near = []
     for i in range(len(edges) - 1):
         apart = (lo[i + 1 :] > hi[i] + tolerance) | (hi[i + 1 :] < lo[i] - tolerance)
@@ -115,14 +111,18 @@ def near_pairs(edges: Sequence[Edge], tolerance: float) -> list[tuple[int, int]]
 
 def _pieces(edge: Edge, nodes: Complexes, tolerance: float) -> list[Link]:
     """Return the links between consecutive nodes on one edge."""
-    on = np.flatnonzero(edge.distance(nodes) <= 2.0 * tolerance)
+    on = edge.near(nodes, 2.0 * tolerance)
     f = edge.fraction(nodes[on])
     near_start, near_end = (np.abs(nodes[on] - end) <= 2.0 * tolerance for end in (edge.start, edge.end))
     f = np.where(near_start, 0.0, np.where(near_end, 1.0, f))
     order = np.argsort(f)
     on, f = on[order], f[order]
     return [
-        Link(int(a), int(b), edge.between(complex(nodes[a]), complex(nodes[b]), from_fraction=float(fa), to_fraction=float(fb)))
+        Link(
+            int(a),
+            int(b),
+            edge.between(complex(nodes[a]), complex(nodes[b]), from_fraction=float(fa), to_fraction=float(fb)),
+        )
         for a, b, fa, fb in zip(on[:-1], on[1:], f[:-1], f[1:], strict=True)
     ]
 

@@ -47,7 +47,7 @@ def _line(z: Complexes, direction: Complexes, edge: Edge) -> list[Floats]:
 
 
 def _arc(z: Complexes, direction: Complexes, edge: Edge) -> list[Floats]:
-    w = z - edge.centre
+    w = z - edge.hub
     b = (w * direction.conj()).real
     square = b**2 - (np.abs(w) ** 2 - edge.radius**2)
     root = np.sqrt(np.maximum(square, 0.0))

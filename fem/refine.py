@@ -1,11 +1,10 @@
-"""Finer meshes of the same plan: every cell split in four, or marked cells split; names kept, new nodes of arcs on the true circle.
+"""Finer meshes of the same plan: every cell split, or marked ones; names kept, new nodes of arcs on the true circle.
 
-Uniform: red refinement (Bank, Sherman & Weiser, Refinement algorithms and data structures for regular local mesh refinement, 1983).
-Local: red-green-blue refinement of scikit-fem, which always halves a longest edge (Carstensen, An adaptive mesh-refining algorithm
-allowing for an H1 stable L2 projection, Constr. Approx. 20, 2004) and so keeps angles bounded.
+Uniform: red refinement (Bank, Sherman & Weiser, Refinement algorithms and data structures for regular local mesh
+refinement, 1983). Local: red-green-blue refinement of scikit-fem, which always halves a longest edge (Carstensen, An
+adaptive mesh-refining algorithm allowing for an H1 stable L2 projection, Constr. Approx. 20, 2004) and so keeps angles
+bounded.
 """
-
-from typing import cast
 
 import numpy as np
 import scipy.sparse as sp
@@ -13,6 +12,7 @@ from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 from skfem import MeshTri
 
+from fem.arc_room import LEAST_ROOM, cramped
 from fem.mesh_data import Floats, Ints, Mesh
 from fem.mesh_verify import verify
 
@@ -28,7 +28,8 @@ def uniform(mesh: Mesh) -> tuple[Mesh, sp.csr_array]:
     Returns
     -------
     finer : Mesh
-        Nodes 0 to N - 1 are the old ones. The children of cell i are i, i + M, i + 2 M (at its corners) and i + 3 M (in its middle).
+        Nodes 0 to N - 1 are the old ones. The children of cell i are i, i + M, i + 2 M (at its corners 0, 1, 2) and
+        i + 3 M (in its middle).
     prolongation : sparse (N_finer, N)
         Old nodes keep their value, a new one gets the mean of the two ends of its edge.
 
@@ -45,10 +46,14 @@ def uniform(mesh: Mesh) -> tuple[Mesh, sp.csr_array]:
     cells = np.concatenate([np.column_stack(child) for child in ((a, ab, ca), (ab, b, bc), (ca, bc, c), (ab, bc, ca))])
     between = n + _find(ends, mesh.facets, n)
     _onto_arcs(points, mesh, between, np.ones(len(between), dtype=bool))
-    facets = np.concatenate((np.column_stack((mesh.facets[:, 0], between)), np.column_stack((between, mesh.facets[:, 1]))))
+    facets = np.concatenate(
+        (np.column_stack((mesh.facets[:, 0], between)), np.column_stack((between, mesh.facets[:, 1])))
+    )
     finer = Mesh(points, cells, np.tile(mesh.region, 4), facets, np.tile(mesh.curve, 2), mesh.plan)
     verify(finer)
-    half = sp.csr_array((np.full(2 * len(ends), 0.5), ends.ravel(), np.arange(0, 2 * len(ends) + 1, 2)), shape=(len(ends), n))
+    half = sp.csr_array(
+        (np.full(2 * len(ends), 0.5), ends.ravel(), np.arange(0, 2 * len(ends) + 1, 2)), shape=(len(ends), n)
+    )
     return finer, sp.csr_array(sp.vstack((sp.eye_array(n, format="csr"), half), format="csr"))
 
 
@@ -73,6 +78,20 @@ def local(mesh: Mesh, marked: NDArray[np.bool_]) -> tuple[Mesh, Ints]:
     MeshError
         If moving nodes onto an arc turns a cell inside out.
     """
+    marked = np.asarray(marked, dtype=bool).copy()
+    while True:
+        finer, parent = _split(mesh, marked)
+        cells = np.isin(np.sort(finer.cells, axis=1), finer.facets[cramped(finer, LEAST_ROOM)]).sum(axis=1) > 1
+        more = parent[cells]
+        if marked[more].all():
+            break
+        marked[more] = True  # a neighbour that was halved over a whole chord is split in four instead
+    verify(finer)
+    return finer, parent
+
+
+def _split(mesh: Mesh, marked: NDArray[np.bool_]) -> tuple[Mesh, Ints]:
+    """Return the mesh with marked cells split, and the parents, before anything is verified."""
     n = len(mesh.points)
     split = MeshTri(mesh.points.T.copy(), mesh.cells.T.copy()).with_subdomains(_bits(len(mesh.cells)))
     split = split.refined(np.flatnonzero(marked))
@@ -80,18 +99,16 @@ def local(mesh: Mesh, marked: NDArray[np.bool_]) -> tuple[Mesh, Ints]:
     for bit, members in split.subdomains.items():
         parent[members] += 1 << int(bit)
     points, cells = split.p.T.copy(), split.t.T.astype(np.int64)
-    facets, curve = _split_facets(mesh, points, n)
     corner = points[cells]
     u, v = corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0]
     clockwise = u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0] < 0.0  # scikit-fem sorts the nodes of a cell
     cells[clockwise] = cells[clockwise, ::-1]
-    finer = Mesh(points, cells, mesh.region[parent], facets, curve, mesh.plan)
-    verify(finer)
-    return finer, parent
+    facets, curve = _split_facets(mesh, points, n)
+    return Mesh(points, cells, mesh.region[parent], facets, curve, mesh.plan), parent
 
 
 def _bits(count: int) -> dict[str, NDArray[np.int64]]:
-    """Return the cells whose number has bit k set, for every k: scikit-fem carries sets of cells along, but no parents."""
+    """Return the cells whose number has bit k set, for every k: scikit-fem hands down sets of cells, but no parents."""
     numbers = np.arange(count)
     return {str(k): np.flatnonzero(numbers >> k & 1) for k in range(max(1, count - 1).bit_length())}
 
@@ -104,7 +121,7 @@ def _split_facets(mesh: Mesh, points: Floats, n: int) -> tuple[Ints, Ints]:
         return mesh.facets, mesh.curve
     gap, nearest = cKDTree(points[n:]).query(middle)
     halved = gap <= 1e-9 * mesh.facet_lengths
-    between = n + nearest
+    between = n + np.asarray(nearest, dtype=np.int64)
     _onto_arcs(points, mesh, between, halved)
     first = np.column_stack((mesh.facets[:, 0], np.where(halved, between, mesh.facets[:, 1])))
     second = np.column_stack((between, mesh.facets[:, 1]))[halved]
@@ -121,7 +138,7 @@ def _edges(cells: Ints, n: int) -> tuple[Ints, Ints]:
 def _find(ends: Ints, facets: Ints, n: int) -> Ints:
     """Return the number of the edge that each facet is; edges come sorted."""
     wanted = np.sort(facets, axis=1)
-    return cast(Ints, np.searchsorted(ends[:, 0] * n + ends[:, 1], wanted[:, 0] * n + wanted[:, 1]))
+    return np.asarray(np.searchsorted(ends[:, 0] * n + ends[:, 1], wanted[:, 0] * n + wanted[:, 1]), dtype=np.int64)
 
 
 def _onto_arcs(points: Floats, mesh: Mesh, between: Ints, new: NDArray[np.bool_]) -> None:

@@ -45,10 +45,6 @@ class OwnKind:
         """Tell pydantic to read the field through this mark."""
         return core_schema.with_info_plain_validator_function(self._validate)
 
-    def __get_pydantic_json_schema__(self, _schema: Any, _handler: Any) -> dict[str, Any]:
-        """Describe the field; unit and bounds are those of the field in which the schedule stands."""
-        return {"type": ["number", "string"], "unit": "of the schedule", "bounds": "of the schedule's kind"}
-
 
 Value = Annotated[float, OwnKind()]
 Difference = Annotated[float, OwnKind(difference=True)]

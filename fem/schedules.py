@@ -84,7 +84,7 @@ class OverTemperature(Schedule):
         for i in back:
             value = said(T[i], "temperature", units)
             lines.append(
-                fault(("over_temperature", i, 0), value, "a temperature above that of the row before", "sort the rows")
+                fault(("over_temperature", i, 0), value, "a temperature above the one before", "sort the rows")
             )
         raise_all("over_temperature", lines)
         return self
@@ -190,11 +190,6 @@ class Scheduled:
     def __get_pydantic_core_schema__(self, _source: Any, _handler: Any) -> core_schema.CoreSchema:
         """Tell pydantic to read the field through this mark."""
         return core_schema.with_info_plain_validator_function(self._validate)
-
-    def __get_pydantic_json_schema__(self, _schema: Any, _handler: Any) -> dict[str, Any]:
-        """Describe the field: unit and bounds of its values."""
-        number = Quantity(self.kind).json_schema()
-        return {**number, "type": ["number", "string", "object"], "schedules": list(self.models())}
 
 
 def law_of(value: ScheduleLike, begin: float = 0.0, end: float = 0.0) -> Law:

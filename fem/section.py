@@ -1,4 +1,4 @@
-"""Outlines -> the plan: which region lies where, and every curve between two regions or between a region and the outside.
+"""Outlines -> the plan: which region lies where, and every curve between two regions or a region and the outside.
 
 >>> square = Outline("slab", True, ((0, 0), (2, 0), (2, 1), (0, 1)), (OutlineEdge("bottom"),) + (OutlineEdge(),) * 3)
 >>> plan = build_plan([square])
@@ -7,120 +7,37 @@
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
 
-from fem.edge import Complexes, Edge, Floats
+from fem.docket import Docket, Stretch
 from fem.errors import Problem, SectionError
 from fem.faces import nest
-from fem.outline import Outline, OutlineEdge, Point, extent
+from fem.outline import Outline, OutlineEdge, extent
 from fem.outline_checks import check_outlines
 from fem.partition import NOBODY, SAME_POINT, Link, divide
+from fem.plan import Curve, Face, Kind, Plan
 from fem.section_checks import check_partition, closed_notes, loops_of, narrow_spots, point_contacts, thin_voids
 from fem.snap import close
 from fem.stretches import OutlineStretch, check_stretches, covers, placed
 
-Kind = Literal["planar", "revolution"]
 GAP_TOLERANCE = 1e-4
 """Default gap tolerance as a part of the section's size (diagonal of its box); common practice, no source."""
 
-__all__ = ["GAP_TOLERANCE", "Curve", "Face", "Kind", "Outline", "OutlineEdge", "OutlineStretch", "Plan", "build_plan"]
-
-
-@dataclass(frozen=True)
-class Curve:
-    """A line or an arc with one region, or the outside, on each side.
-
-    Attributes
-    ----------
-    labels : frozenset of str
-        Every edge of every outline that it lies on ("deck.top", "deck.edge 3"), and every stretch.
-    left, right : int
-        Region on each side, seen from start to end; -1: outside or void.
-    kind : "line" or "arc"
-    start, end : (x, y)
-        m.
-    centre : (x, y) or None
-        Of an arc, m.
-    radius : float
-        Of an arc, m; 0 for a line.
-    length : float
-        Exact, m.
-    edge : Edge
-        The same in the form that computes.
-    """
-
-    labels: frozenset[str]
-    left: int
-    right: int
-    kind: Literal["line", "arc"]
-    start: Point
-    end: Point
-    centre: Point | None
-    radius: float
-    length: float
-    edge: Edge
-
-
-@dataclass(frozen=True)
-class Face:
-    """A connected piece of a region.
-
-    Attributes
-    ----------
-    region : int
-    loops : tuple of tuple of (curve, forward)
-        The outer loop counter-clockwise, then the loops of its holes clockwise; `forward` tells whether the curve is run from its start.
-    """
-
-    region: int
-    loops: tuple[tuple[tuple[int, bool], ...], ...]
-
-
-@dataclass(frozen=True, eq=False)
-class Plan:
-    """The section as regions that touch along curves.
-
-    Attributes
-    ----------
-    kind : "planar" or "revolution"
-        In a body of revolution x is the radius.
-    region_names : tuple of str
-        In drawing order, without voids.
-    region_area : (R,) float
-        Exact area in the section plane, m2.
-    curves : tuple of Curve
-    faces : tuple of Face
-    notes : tuple of str
-        What was noticed or mended: gaps closed, regions that touch in one point only.
-    hidden : frozenset of str
-        Labels of edges and stretches that lie on no curve, since a later region covers them or they lie in a void.
-    size : float
-        Diagonal of the section's box, m.
-    gap_tolerance : float
-        m.
-    """
-
-    kind: Kind
-    region_names: tuple[str, ...]
-    region_area: Floats
-    curves: tuple[Curve, ...]
-    faces: tuple[Face, ...]
-    notes: tuple[str, ...]
-    hidden: frozenset[str]
-    size: float
-    gap_tolerance: float
-
-    def links(self) -> tuple[Complexes, list[Link]]:
-        """Return the points at which curves end, and the curves as links between them (sides are regions)."""
-        numbers: dict[complex, int] = {}
-        links = []
-        for curve in self.curves:
-            a, b = (numbers.setdefault(z, len(numbers)) for z in (curve.edge.start, curve.edge.end))
-            links.append(Link(a, b, curve.edge, [], curve.left, curve.right))
-        return np.array(list(numbers), dtype=np.complex128), links
+__all__ = [
+    "GAP_TOLERANCE",
+    "Curve",
+    "Face",
+    "Kind",
+    "Outline",
+    "OutlineEdge",
+    "OutlineStretch",
+    "Plan",
+    "build_plan",
+    "plan_of",
+    "stretch_label",
+]
 
 
 def build_plan(
@@ -169,6 +86,42 @@ def build_plan(
     return drawing.plan(kind, tuple(notes), tolerance)
 
 
+def plan_of(docket: Docket) -> Plan:
+    """Return the plan of a docket's section, its curves split and labelled for every stretch that an exposure names.
+
+    Raises
+    ------
+    SectionError
+        See `build_plan`.
+    """
+    section = docket.section
+    outlines = [
+        Outline(
+            region.name,
+            region.stock is not None,
+            tuple((vertex.x, vertex.y) for vertex in region.outline),
+            tuple(OutlineEdge(vertex.edge, vertex.via) for vertex in region.outline),
+        )
+        for region in section.regions
+    ]
+    stretches = {
+        stretch_label(ref): ref for exposure in docket.exposures for ref in exposure.on if isinstance(ref, Stretch)
+    }
+    return build_plan(
+        outlines,
+        kind=section.kind,
+        gap_tolerance=section.gap_tolerance,
+        close_gaps=section.close_gaps,
+        stretches=[OutlineStretch(ref.region, ref.start, ref.end, label) for label, ref in stretches.items()],
+    )
+
+
+def stretch_label(stretch: Stretch) -> str:
+    """Return the label that `plan_of` gives to the curves on a stretch."""
+    (x0, y0), (x1, y1) = stretch.start, stretch.end
+    return f"stretch:{stretch.region}:{x0:.9g},{y0:.9g}:{x1:.9g},{y1:.9g}"
+
+
 def _refuse(faults: list[Problem]) -> None:
     if faults:
         raise SectionError(faults)
@@ -181,14 +134,16 @@ def _rough_size(outlines: Sequence[Outline]) -> float:
 
 
 class _Drawing:
-    """The outlines divided into links, and the links walked into faces; links between two parts of one region are left out."""
+    """The outlines divided into links, without those inside one region, and the links walked into faces."""
 
     def __init__(self, outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], size: float) -> None:
         self.outlines, self.size = outlines, size
         self.stretches = [on for on in (placed(outlines, stretch) for stretch in stretches) if on is not None]
         self.nodes, links = divide(outlines, [z for on in self.stretches for z in on.points], size)
         for link in links:
-            link.left, link.right = (o if o != NOBODY and outlines[o].solid else NOBODY for o in (link.left, link.right))
+            link.left, link.right = (
+                o if o != NOBODY and outlines[o].solid else NOBODY for o in (link.left, link.right)
+            )
         self.links = [link for link in links if link.left != link.right]
         self.nested = nest(loops_of(self.links, self.nodes))
 

@@ -1,8 +1,6 @@
-"""What outlines must be together: nobody wholly covered, nothing thinner than the gap tolerance, no gap left open unnoticed."""
+"""What outlines must be together: nobody wholly covered, nothing thinner than the gap tolerance, no gap left unnoticed."""
 
 from collections.abc import Iterable, Sequence
-
-import numpy as np
 
 from fem.edge import Complexes
 from fem.errors import Problem, SectionError
@@ -28,7 +26,9 @@ def loops_of(links: Sequence[Link], nodes: Complexes) -> list[Loop]:
         x, y = spot.args
         allowed = "edges that either coincide or keep apart"
         hint = "move the edges that almost coincide here onto each other, or apart"
-        raise SectionError.single("section", "a tangle of edges that almost coincide", allowed, hint, xy=(x, y)) from None
+        raise SectionError.single(
+            "section", "a tangle of edges that almost coincide", allowed, hint, xy=(x, y)
+        ) from None
 
 
 def thin_voids(outlines: Sequence[Outline], size: float, tolerance: float) -> list[Problem]:
@@ -43,7 +43,13 @@ def thin_voids(outlines: Sequence[Outline], size: float, tolerance: float) -> li
 
 
 def check_partition(
-    outlines: Sequence[Outline], links: Sequence[Link], nested: Nested, spots: Iterable[Spot], tolerance: float, *, tried: bool
+    outlines: Sequence[Outline],
+    links: Sequence[Link],
+    nested: Nested,
+    spots: Iterable[Spot],
+    tolerance: float,
+    *,
+    tried: bool,
 ) -> list[Problem]:
     """Return every fault of the outlines together.
 
@@ -60,7 +66,11 @@ def check_partition(
     """
     found = _covered(outlines, nested)
     for spot in spots:
-        found.append(_gap(outlines, links, spot, tolerance, tried=tried) if spot.owner == NOBODY else _thin(outlines, links, spot, tolerance))
+        found.append(
+            _gap(outlines, links, spot, tolerance, tried=tried)
+            if spot.owner == NOBODY
+            else _thin(outlines, links, spot, tolerance)
+        )
     return found
 
 
@@ -93,7 +103,9 @@ def _thin(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot, tolera
     between = " and ".join(dict.fromkeys(edge_place(outlines, links[i], of=spot.owner) for i in spot.links))
     allowed = f"parts wider than the gap tolerance of {tolerance:.3g} m"
     hint = "widen the part, or move the edges onto each other; if it is meant, lower gap_tolerance"
-    return Problem(f"{outline.place()}, between {between}", f"a width of {spot.width:.3g} m", allowed, hint, xy=_xy(spot.z))
+    return Problem(
+        f"{outline.place()}, between {between}", f"a width of {spot.width:.3g} m", allowed, hint, xy=_xy(spot.z)
+    )
 
 
 def gap_sides(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot) -> str:
@@ -116,13 +128,14 @@ def _gap(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot, toleran
 def closed_notes(outlines: Sequence[Outline], links: Sequence[Link], gaps: Iterable[Spot]) -> list[str]:
     """Return a note on each gap that was closed."""
     return [
-        f"closed a gap of {spot.width:.3g} m between {gap_sides(outlines, links, spot)} at x = {spot.z.real:.6g} m, y = {spot.z.imag:.6g} m"
+        f"closed a gap of {spot.width:.3g} m between {gap_sides(outlines, links, spot)} "
+        f"at x = {spot.z.real:.6g} m, y = {spot.z.imag:.6g} m"
         for spot in gaps
     ]
 
 
 def point_contacts(outlines: Sequence[Outline], links: Sequence[Link], nodes: Complexes) -> list[str]:
-    """Return a note on each node around which the outside, or one region, appears twice: parts touch there in one point only."""
+    """Return a note on each node around which the outside appears twice: parts touch there in one point only."""
     around: dict[int, list[int]] = {}
     for sector in sectors(links, nodes):
         around.setdefault(sector.node, []).append(sector.owner)
@@ -138,7 +151,9 @@ def point_contacts(outlines: Sequence[Outline], links: Sequence[Link], nodes: Co
     return notes
 
 
-def narrow_spots(links: Sequence[Link], nodes: Complexes, nested: Nested, tolerance: float) -> tuple[list[Spot], list[Spot]]:
+def narrow_spots(
+    links: Sequence[Link], nodes: Complexes, nested: Nested, tolerance: float
+) -> tuple[list[Spot], list[Spot]]:
     """Return where regions are hair-thin, and the gaps between them."""
     shapes = Shapes(links, nodes, nested, tolerance)
     return shapes.thin(), shapes.gaps()

@@ -12,8 +12,8 @@ from fem.outline import Outline, OutlineEdge, Point
 def close(outlines: Sequence[Outline], tolerance: float) -> tuple[Outline, ...]:
     """Return the outlines moved onto each other where they are closer than the tolerance.
 
-    Points of a later outline go to vertices, else to edges, of the earlier ones; then vertices of earlier outlines that lie before the
-    inner part of a later edge go to that edge.
+    Points of a later outline go to vertices, else to edges, of the earlier ones; then vertices of earlier outlines that
+    lie before the inner part of a later edge go to that edge.
     """
     done: list[Outline] = []
     for outline in outlines:
@@ -29,13 +29,14 @@ def _moved(outline: Outline, others: Sequence[Outline], tolerance: float) -> Out
         return outline
     vertices = tuple(_onto(v, others, tolerance, to_vertices=True) for v in outline.vertices)
     edges = tuple(
-        OutlineEdge(edge.name, None if edge.via is None else _onto(edge.via, others, tolerance, to_vertices=False)) for edge in outline.edges
+        OutlineEdge(edge.name, None if edge.via is None else _onto(edge.via, others, tolerance, to_vertices=False))
+        for edge in outline.edges
     )
     return replace(outline, vertices=vertices, edges=edges)
 
 
 def _onto(point: Point, others: Sequence[Outline], tolerance: float, *, to_vertices: bool) -> Point:
-    """Return the nearest vertex within the tolerance, else the nearest point of an edge within it, else the point itself."""
+    """Return the nearest vertex within the tolerance, else the nearest point of an edge within it, else the point."""
     z = complex(*point)
     edges = [edge for outline in others for edge in outline.chain]
     if to_vertices:

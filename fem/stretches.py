@@ -1,4 +1,4 @@
-"""Stretches of an outline between two points that need not be vertices, so that they survive a vertex that is moved or inserted."""
+"""Stretches of an outline between two points that need not be vertices, so that moved or inserted vertices matter not."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -71,7 +71,9 @@ def covers(stretch: Placed, outline: Outline, position: int, z: complex) -> bool
     return (stretch.start - s) % stretch.around <= (stretch.start - stretch.end) % stretch.around
 
 
-def check_stretches(outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], tolerance: float) -> list[Problem]:
+def check_stretches(
+    outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], tolerance: float
+) -> list[Problem]:
     """Return the stretches that have no outline or no length."""
     found = []
     names = ", ".join(f'"{outline.name}"' for outline in outlines)
@@ -79,9 +81,13 @@ def check_stretches(outlines: Sequence[Outline], stretches: Sequence[OutlineStre
         place = f'stretch of "{stretch.outline}" from ({stretch.start[0]:.6g}, {stretch.start[1]:.6g}) m'
         on = placed(outlines, stretch)
         if on is None:
-            found.append(Problem(place, f'"{stretch.outline}"', f"one of {names}", "name a region or void of the section"))
+            found.append(
+                Problem(place, f'"{stretch.outline}"', f"one of {names}", "name a region or void of the section")
+            )
         elif abs(on.points[0] - on.points[1]) <= tolerance:
             xy = (on.points[0].real, on.points[0].imag)
             hint = "move one end; a whole outline is written as region.*"
-            found.append(Problem(place, "a stretch of no length", "two ends at different points of the outline", hint, xy=xy))
+            found.append(
+                Problem(place, "a stretch of no length", "two ends at different points of the outline", hint, xy=xy)
+            )
     return found

@@ -46,6 +46,12 @@ def carried(error: Any) -> InitErrorDetails:
     return InitErrorDetails(type=kind, loc=error["loc"], input=error["input"])
 
 
+def _plain(lines: list[Any]) -> list[Any]:
+    """Return the lines without those that only say that too few sound items are left of a list with faulty ones."""
+    deeper = {line["loc"][:n] for line in lines for n in range(1, len(line["loc"]))}
+    return [line for line in lines if line["type"] != "too_short" or line["loc"] not in deeper]
+
+
 class Strict(BaseModel):
     """A frozen part of a docket. A field marked `exclude` has no place in a file.
 
@@ -66,8 +72,11 @@ class Strict(BaseModel):
     HINTS: ClassVar[dict[str, str]] = {}
     """How to mend a key that is missing, or one that users are known to try."""
 
+    SPELLED: ClassVar[dict[str, str]] = {}
+    """Fields that a file fills by another key, which has an entry in `HINTS`."""
+
     @classmethod
-    def keys(cls) -> tuple[str, ...]:
+    def file_keys(cls) -> tuple[str, ...]:
         """Return the keys that a file may use."""
         return tuple(field.alias or name for name, field in cls.model_fields.items() if not field.exclude)
 
@@ -87,17 +96,17 @@ class Strict(BaseModel):
         data = cls.from_short(data)
         if not isinstance(data, dict):
             return handler(data)
-        known = {*cls.keys(), *cls.model_fields}
+        known = {*cls.file_keys(), *cls.model_fields}
         strangers = [key for key in data if key not in known]
         whole = {key: tuples(value) for key, value in data.items() if key in known}
         lines = []
         for key in strangers:
-            allowed, hint = unknown("the keys", key, cls.keys())
+            allowed, hint = unknown("the keys", key, cls.file_keys())
             lines.append(InitErrorDetails(type=refusal(allowed, cls.HINTS.get(key, hint)), loc=(key,), input=data[key]))
         try:
             model = handler(whole)
         except ValidationError as error:
-            lines += [cls._missing(line) or carried(line) for line in error.errors(include_url=False)]
+            lines += [cls._missing(line) or carried(line) for line in _plain(error.errors(include_url=False))]
         if lines:
             raise ValidationError.from_exception_data(cls.__name__, lines)
         return model
@@ -108,6 +117,9 @@ class Strict(BaseModel):
         if line["type"] != "missing" or len(line["loc"]) != 1:
             return None
         key = str(line["loc"][0])
+        if key in cls.SPELLED:
+            key = cls.SPELLED[key]
+            return InitErrorDetails(type=refusal(f"{key} is required", cls.HINTS[key]), loc=(key,), input=None)
         field = next((field for name, field in cls.model_fields.items() if key in (name, field.alias)), None)
         what = "" if field is None or not field.description else f": {field.description.rstrip('.')}"
         return InitErrorDetails(type=refusal(f"{key}{what}", cls.HINTS.get(key, f"add {key}")), loc=(key,), input=None)

@@ -67,6 +67,8 @@ class Turner:
         if judgement.settled:
             return Turn(found, "nothing: every wanted band is reached and every limit is settled", "settled")
         worst = judgement.needs[0]
+        if worst.total <= 1.0:
+            return self._prove(study, bench, worst, found)
         stalled = self._last is not None and self._last[0] != "everywhere" and worst.total > 0.7 * self._last[1]
         for offer in self._offers(study, judgement, bench, worst, stalled=stalled):
             if offer is not None:
@@ -74,10 +76,18 @@ class Turner:
                 return Turn(found, offer.then, offer.todo, offer.mesh, offer.owing)
         return Turn(found, "stop: nothing that would help fits the rest of the allowance", "spent")
 
+    def _prove(self, study: Study, bench: Bench, worst: Need, found: str) -> Turn:
+        """Return the turn that looks whether differences between meshes shrink on a finer one, where all else is settled."""
+        offer = self._everywhere(study, bench, worst)
+        if offer is None:
+            return Turn(found, "stop: a finer mesh, which would show whether errors fall, does not fit the allowance", "spent")
+        then = "split every cell, since differences between meshes do not yet shrink as they must"
+        return Turn(found, then, "everywhere")
+
     def _offers(self, study: Study, judgement: Judgement, bench: Bench, worst: Need, *, stalled: bool) -> list[Turn | None]:
         if not study.levels or len(study.levels) < 3:
             return []
-        if study.timing and worst.time > TIME_SHARE * max(worst.total, 1e-300):
+        if study.timing and worst.time > TIME_SHARE * worst.total:
             return [self._steps(study, bench, worst), self._everywhere(study, bench, worst)]
         everywhere = self._everywhere(study, bench, worst)
         local = self._cells(study, judgement, bench)
@@ -130,21 +140,29 @@ class Turner:
             kelvin = AIM * need.goal.wanted if need.goal.key.kind in ("gauge", "highest", "lowest", "mean", "difference") else None
             worst = doubt[inside].max(axis=0)
             # A goal that is not a temperature has no scale in kelvin: aim at the doubt's own worst, less what it must fall by.
-            over = np.maximum(over, worst / (kelvin if kelvin is not None else worst.max() / max(need.space, 1.001)))
+            over = np.maximum(over, worst / (kelvin if kelvin is not None else 0.5 * AIM * worst.max() / max(need.space, 1.0)))
         return over
 
     def _steps(self, study: Study, bench: Bench, worst: Need) -> Turn | None:
-        owed = step_doubt(study)
-        times = study.levels[0].steps.times
-        until = times[:-1] <= worst.t
-        owing = until & (owed > 0.1 * owed[until].max())
-        steps = len(times) - 1 + int(owing.sum())
-        cells = len(study.finest.mesh.cells)
-        base = len(study.levels[0].mesh.cells)
-        seconds = WHOLE_STUDY * bench.pace * bench.work(16 * base, steps)
+        owing = self._owing(study, worst)
+        steps = len(study.levels[0].steps) + int(owing.sum())
+        cells = 16 * len(study.levels[0].mesh.cells)
+        seconds = WHOLE_STUDY * bench.pace * bench.work(cells, steps)
         if not self.fits(cells, seconds):
             return None
         return Turn("", f"halve the {int(owing.sum())} steps that owe most ({steps} steps)", "steps", owing=owing)
+
+    @staticmethod
+    def _owing(study: Study, worst: Need) -> np.ndarray:
+        """Return which steps to halve: those whose doubt is above what the band leaves to time, and the two before each."""
+        times = study.timing[0].steps.times
+        if worst.goal.key not in study.timing[0].history.keys:  # a derived series: a difference or a rate
+            return np.ones(len(times) - 1, dtype=bool)
+        owed = step_doubt(study, worst.goal.key)
+        owing = owed > 0.25 * owed.max() * TIME_SHARE / worst.time
+        for _ in range(2):  # what is wrong at the end of a step was partly made in the steps before it
+            owing[:-1] |= owing[1:]
+        return owing if owing.mean() < 0.5 else np.ones(len(owing), dtype=bool)
 
 
 def take(turn: Turn, study: Study, bench: Bench) -> Study:

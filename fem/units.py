@@ -280,16 +280,6 @@ class Quantity:
         """Tell pydantic to read the field through this mark."""
         return core_schema.with_info_plain_validator_function(self._validate)
 
-    def json_schema(self) -> dict[str, Any]:
-        """Return the description of a field so marked: unit and bounds."""
-        low, high, open_low = self.bounds
-        bound = "exclusiveMinimum" if open_low else "minimum"
-        return {"type": ["number", "string"], "unit": KINDS[self.kind].si or "-", bound: low, "maximum": high}
-
-    def __get_pydantic_json_schema__(self, _schema: Any, _handler: Any) -> dict[str, Any]:
-        """Describe the field."""
-        return self.json_schema()
-
 
 def in_unit(value: float, unit: str, kind: str) -> float:
     """Return an SI value as a number in the unit, correctly rounded.

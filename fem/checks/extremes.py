@@ -8,8 +8,10 @@ Heat made or flux into the section lifts the upper bound only, heat taken out th
 import numpy as np
 from numpy.typing import NDArray
 
+from fem.bands import NARROWEST
 from fem.checks.facts import Facts
 from fem.findings import Finding
+from fem.history import TEMPERATURES
 from fem.laws import Law
 from fem.problem import Face
 
@@ -45,7 +47,8 @@ def bounds(facts: Facts) -> tuple[float, float, float]:
     problem, run = facts.problem, facts.study.finest
     times = _times(facts)
     lows, highs = [np.min(run.start)], [np.max(run.start)]
-    slack = 1e-6 * max(float(np.ptp(run.peak)), 1.0)
+    # What is far below the band that anybody asked for is the rounding of the time stepping, not a doubt.
+    slack = NARROWEST * min((g.wanted for g in facts.goals if g.key.kind in TEMPERATURES), default=1.0)
     heated = cooled = False
     for face in problem.faces:
         x, y = _places(facts, face)

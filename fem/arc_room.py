@@ -1,0 +1,59 @@
+"""Whether the cells beside an arc survive refinement, which moves the middles of chords out onto the arc."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from fem.mesh_data import Floats, Ints, Mesh
+
+ROOM = 0.45
+"""Least area of a child over a quarter of its parent's in a new mesh. Beside the node of a cusp between a line and an arc
+it is 1/2 however short the chords (there the arc's height in the middle of a chord is half of the chord's), and stays so
+when refined; elsewhere it tends to 1."""
+LEAST_ROOM = 0.2
+"""The same after local refinement, whose halved neighbours may have half of the height over the same chord."""
+
+
+def cramped(mesh: Mesh, room: float = ROOM) -> NDArray[np.bool_]:
+    """Return the facets on arcs (F,) that are too long: refinement would leave a child beside them less than `room`."""
+    n = len(mesh.points)
+    z = np.asarray(mesh.points[:, 0] + 1j * mesh.points[:, 1], dtype=np.complex128)
+    middle = 0.5 * (z[mesh.facets[:, 0]] + z[mesh.facets[:, 1]])
+    move = _onto_arc(mesh, middle) - middle
+    facet_key = np.sort(mesh.facets, axis=1) @ np.array([n, 1])
+    order = np.argsort(facet_key)
+    pairs = np.sort(np.stack((mesh.cells, np.roll(mesh.cells, -1, axis=1)), axis=2), axis=2)
+    key = pairs[:, :, 0] * n + pairs[:, :, 1]
+    at = np.minimum(np.searchsorted(facet_key, key, sorter=order), len(order) - 1)
+    facet: Ints = np.where(facet_key[order[at]] == key, order[at], -1)  # (M, 3): the facet on each side of a cell
+    shift = np.where(facet >= 0, move[facet], 0.0)
+    crushed = (shift != 0.0).any(axis=1)
+    cells = np.flatnonzero(crushed)
+    crushed[cells] = _least_child(z[mesh.cells[cells]], shift[cells]) < room
+    long = np.zeros(len(mesh.facets), dtype=bool)
+    beside = facet[crushed]
+    long[beside[beside >= 0]] = True
+    return np.asarray(long & (move != 0.0))
+
+
+def _onto_arc(mesh: Mesh, z: NDArray[np.complex128]) -> NDArray[np.complex128]:
+    """Return the points of facets, moved radially onto their arcs."""
+    on = z.copy()
+    for i, curve in enumerate(mesh.plan.curves):
+        if curve.edge.centre is not None:
+            mine = mesh.curve == i
+            spoke = z[mine] - curve.edge.centre
+            on[mine] = curve.edge.centre + curve.radius * spoke / np.abs(spoke)
+    return on
+
+
+def _least_child(corner: NDArray[np.complex128], shift: NDArray[np.complex128]) -> Floats:
+    """Return the smallest area of the four children of cells (k, 3) over a quarter of the parent's."""
+    middle = 0.5 * (corner + np.roll(corner, -1, axis=1)) + shift
+    children = [np.column_stack((corner[:, i], middle[:, i], middle[:, i - 1])) for i in range(3)]
+    areas = np.array([_area(child) for child in (*children, middle)])
+    return np.asarray(4.0 * areas.min(axis=0) / _area(corner))
+
+
+def _area(corner: NDArray[np.complex128]) -> Floats:
+    u, v = corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0]
+    return np.asarray(0.5 * (u.real * v.imag - u.imag * v.real))
