@@ -6,8 +6,8 @@ from numpy.typing import NDArray
 from fem.mesh_data import Floats, Ints, Mesh
 
 ROOM = 0.45
-"""Least area of a child over a quarter of its parent's in a new mesh. Beside the node of a cusp between a line and an arc
-it is 1/2 however short the chords (there the arc's height in the middle of a chord is half of the chord's), and stays so
+"""Least area of a child over a quarter of its parent's in a new mesh. Beside the node of a cusp between a line and an
+arc it is 1/2 however short the chords (the arc in the middle of a chord is half as high as the chord), and stays so
 when refined; elsewhere it tends to 1."""
 LEAST_ROOM = 0.2
 """The same after local refinement, whose halved neighbours may have half of the height over the same chord."""

@@ -107,6 +107,6 @@ class Assembly:
         return self._share(facets.ravel(), half.ravel())
 
     def _share(self, nodes: Ints, size: Floats) -> Share:
-        total = np.bincount(nodes, weights=size, minlength=self.n)
+        total: Floats = np.bincount(nodes, weights=size, minlength=self.n).astype(np.float64)
         owners = np.unique(nodes)
         return Share(owners, total[owners], self.mesh.points[owners, 0], self.mesh.points[owners, 1])

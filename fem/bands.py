@@ -59,7 +59,7 @@ class Grid:
     @property
     def ends(self) -> NDArray[np.bool_]:
         """True on step ends, False between them."""
-        return self.first == self.last
+        return np.asarray(self.first == self.last)
 
     def upto(self, t: float) -> "Grid":
         """Return the part of the grid up to the last step end at or before t."""
@@ -88,7 +88,9 @@ def grid_of(problem: Problem, steps: Steps) -> Grid:
     order = np.lexsort((side, t))
     t, side = t[order], side[order]
     edges = np.concatenate(([times[0]], jumps, [times[-1]]))
-    stretch = np.clip(np.where(side < 0, np.searchsorted(edges, t, "left"), np.searchsorted(edges, t, "right")) - 1, 0, len(edges) - 2)
+    stretch = np.clip(
+        np.where(side < 0, np.searchsorted(edges, t, "left"), np.searchsorted(edges, t, "right")) - 1, 0, len(edges) - 2
+    )
     reported = (side < 0) & np.isin(t, reports)
     is_end = np.isin(t, times)
     index = np.arange(len(t))
@@ -100,7 +102,11 @@ def grid_of(problem: Problem, steps: Steps) -> Grid:
 def report_times(problem: Problem) -> Floats:
     """Return the reporting times: every interval after the begin, the instants and the end, s."""
     assert problem.begin is not None and problem.end is not None  # noqa: S101, PT018 - transient only
-    count = int(np.floor((problem.end - problem.begin) / problem.report_every * (1 + 1e-12))) if problem.report_every > 0 else 0
+    count = (
+        int(np.floor((problem.end - problem.begin) / problem.report_every * (1 + 1e-12)))
+        if problem.report_every > 0
+        else 0
+    )
     regular = problem.begin + problem.report_every * np.arange(1, count + 1)
     inside = [t for t in problem.instants if problem.begin < t <= problem.end]
     return np.unique(np.concatenate((regular, inside, [problem.end])))

@@ -10,17 +10,13 @@ from fem.cli_check_tables import show
 from fem.cli_run import asked_for, in_docket, read
 from fem.docket import Docket
 from fem.docket_hash import content_hash
-from fem.edge import Edge, winding
-from fem.errors import Problem, SectionError
 from fem.laws import Law
 from fem.numbers import Scale, Writer
 from fem.pose import Posed, pose
 from fem.problem import Face
 from fem.section import Plan
+from fem.where import regions_at
 
-ON_BORDER = 1e-9
-"""A gauge nearer to a curve than this part of the section's size lies on it: rounding of the coordinates."""
-OUTSIDE = "outside the section"
 SAMPLES = 500
 """Instants at which a schedule is read, besides its breaks, for the lowest and highest value that is told."""
 
@@ -38,7 +34,6 @@ def check_docket(path: Path, *, variant: str | None, as_json: bool) -> None:
     docket = read(asked_for(path, variant=variant))
     with in_docket(path):
         posed = pose(docket)
-        _refuse_gauges_outside(docket, posed.plan)
     found = found_in(docket, posed)
     if as_json:
         put_json(found)
@@ -85,7 +80,7 @@ def found_in(docket: Docket, posed: Posed) -> Entry:
         "exposures": [_exposure(face, posed, writer) for face in posed.problem.faces],
         "clock": _clock(docket, posed, writer.scale("time")),
         "gauges": _gauges(docket, posed.plan, writer),
-        "limits": [{"name": limit.name, "sentence": limit.sentence()} for limit in docket.limits],
+        "limits": [{"name": limit.name, "sentence": limit.sentence(docket.units)} for limit in docket.limits],
         "wanted": {"gauges": difference.out(docket.wanted.gauges)},
         "allowance": {"cells": docket.allowance.cells, "seconds": docket.allowance.seconds},
     }
@@ -183,35 +178,13 @@ def _gauges(docket: Docket, plan: Plan, writer: Writer) -> list[Entry]:
             "name": gauge.name,
             "x": length.out(gauge.x),
             "y": length.out(gauge.y),
-            "region": where(plan, gauge.x, gauge.y),
+            "region": _where(plan, gauge.x, gauge.y),
             "band": difference.out(docket.wanted.gauges if gauge.band is None else gauge.band),
         }
         for gauge in docket.gauges
     ]
 
 
-def _refuse_gauges_outside(docket: Docket, plan: Plan) -> None:
-    writer = Writer(docket.units)
-    outside = [gauge for gauge in docket.gauges if where(plan, gauge.x, gauge.y) == OUTSIDE]
-    if outside:
-        allowed, hint = "a point of the section", "move it onto a region"
-        raise SectionError(Problem(f'gauge "{g.name}", at', writer.place(g.x, g.y), allowed, hint) for g in outside)
-
-
-def where(plan: Plan, x: float, y: float) -> str:
-    """Return the region in which a point lies, or the regions on whose border; "outside the section" elsewhere."""
-    z = np.array([complex(x, y)])
-    for curve in plan.curves:
-        if curve.edge.distance(z)[0] <= ON_BORDER * plan.size:
-            sides = [plan.region_names[i] for i in sorted({curve.left, curve.right}) if i >= 0]
-            return f"border of {' and '.join(sides)}"
-    for face in plan.faces:
-        loops = [[_directed(plan, i, forward=forward) for i, forward in loop] for loop in face.loops]
-        if sum(int(winding(loop, z)[0]) for loop in loops) > 0:
-            return plan.region_names[face.region]
-    return OUTSIDE
-
-
-def _directed(plan: Plan, i: int, *, forward: bool) -> Edge:
-    edge = plan.curves[i].edge
-    return edge if forward else edge.reversed()
+def _where(plan: Plan, x: float, y: float) -> str:
+    regions = regions_at(plan, x, y)
+    return regions[0] if len(regions) == 1 else f"border of {' and '.join(regions)}"

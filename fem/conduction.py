@@ -11,7 +11,7 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from fem.assembly import Assembly, Share
-from fem.enthalpy import ConstantEnthalpy, enthalpy
+from fem.enthalpy import ZERO, enthalpy
 from fem.laws import Law
 from fem.mesh import Mesh
 from fem.problem import Face, Problem
@@ -67,6 +67,8 @@ class Conduction:
         Nodes whose temperature is given.
     free : (n_free,) int
         The others.
+    held_parts : (n_faces, n_held) float
+        The part of each held node that belongs to each held face.
     linear : bool
         True when no coefficient depends on temperature and no conduction or film coefficient on time, so that a step needs one solve.
     """
@@ -83,7 +85,7 @@ class Conduction:
         self.linear = self._is_linear()
         self._stiffness = self._assemble(0.0, np.zeros(self.n)) if self._fixed_conductivity() else None
         self._capacity: Floats | None = None
-        if all(isinstance(e, ConstantEnthalpy) for e in self.enthalpies):
+        if all("T" not in law.needs for law in problem.heat_capacity):
             self._capacity = self.capacity(np.zeros(self.n))
 
     def _find_held(self) -> None:
@@ -93,12 +95,14 @@ class Conduction:
             surface[self.surfaces[i].nodes] += self.surfaces[i].size
             count[self.surfaces[i].nodes] += 1.0
         # The part of each held node that belongs to each held face; nodes on the axis have no surface and are shared evenly.
-        self._parts_of = {}
+        self.held, self.free = np.flatnonzero(count > 0.0), np.flatnonzero(count == 0.0)
+        self.held_parts = np.zeros((len(self.problem.faces), len(self.held)))
+        self._held_at = {i: np.searchsorted(self.held, self.surfaces[i].nodes) for i in self.held_faces}
         for i in self.held_faces:
             nodes, size = self.surfaces[i].nodes, self.surfaces[i].size
             total = surface[nodes]
-            self._parts_of[i] = np.where(total > 0.0, size / np.where(total > 0.0, total, 1.0), 1.0 / count[nodes])
-        self.held, self.free = np.flatnonzero(count > 0.0), np.flatnonzero(count == 0.0)
+            part = np.where(total > 0.0, size / np.where(total > 0.0, total, 1.0), 1.0 / count[nodes])
+            self.held_parts[i, self._held_at[i]] = part
 
     def _fixed_conductivity(self) -> bool:
         return all(not (law.needs & {"T", "t"}) for law in self.problem.conductivity)
@@ -111,6 +115,8 @@ class Conduction:
     # --- what is stored -------------------------------------------------------------------------------------------------------
     def heat(self, T: Floats) -> Floats:
         """Return the nodes' enthalpy, J (per metre when planar), shape (N,)."""
+        if self._capacity is not None:
+            return self._capacity * (T - ZERO)
         H = np.zeros(self.n)
         for share, rule in zip(self.parts.volumes, self.enthalpies, strict=True):
             H[share.nodes] += share.size * rule.heat(T[share.nodes], share.x, share.y)
@@ -160,6 +166,18 @@ class Conduction:
             sources[r] = heat.sum()
         return Loads(into, slope, faces, sources)
 
+    def film_coefficients(self) -> sp.csr_array:
+        """Return each face's film coefficient times surface at each node, W/K, (n_faces, N), where it depends on place only."""
+        rows, columns, values = [], [], []
+        for i, (face, share) in enumerate(zip(self.problem.faces, self.surfaces, strict=True)):
+            for film in face.films:
+                rows.append(np.full(len(share.nodes), i))
+                columns.append(share.nodes)
+                values.append(share.size * film.coefficient(x=share.x, y=share.y))
+        empty = [np.empty(0)]
+        where = np.concatenate(empty + rows).astype(np.intp), np.concatenate(empty + columns).astype(np.intp)
+        return sp.csr_array((np.concatenate(empty + values), where), shape=(len(self.problem.faces), self.n))
+
     @staticmethod
     def _density(face: Face, share: Share, t: float, T: Floats) -> tuple[Floats, Floats]:
         """Return the heat flux into the section, W/m2, and minus its derivative by temperature, where that is positive."""
@@ -180,22 +198,19 @@ class Conduction:
     # --- what is held ---------------------------------------------------------------------------------------------------------
     def held_values(self, t: float) -> Floats:
         """Return the held nodes' temperatures at t [s], K, shape (n_held,); a node of two held faces takes their weighted mean."""
-        total = np.zeros(self.n)
+        total = np.zeros(len(self.held))
         for i in self.held_faces:
-            share, law = self.surfaces[i], self.problem.faces[i].held
+            share, law, at = self.surfaces[i], self.problem.faces[i].held, self._held_at[i]
             assert law is not None  # noqa: S101 - held_faces lists only faces with one
-            total[share.nodes] += self._parts_of[i] * _at(law, t, share, np.zeros(len(share.nodes)))
-        return total[self.held]
+            total[at] += self.held_parts[i, at] * _at(law, t, share, np.zeros(len(at)))
+        return total
 
     def split_reaction(self, reaction: Floats) -> Floats:
-        """Share the heat that the held nodes take in, (N,) W, among the faces, (n_faces,) W.
+        """Share the heat that the held nodes take in, (n_held,) W, among the faces, (n_faces,) W.
 
         At a corner of two held faces the split is by the lumped surface of each: the sum is exact, the split is a convention.
         """
-        faces = np.zeros(len(self.problem.faces))
-        for i in self.held_faces:
-            faces[i] = self._parts_of[i] @ reaction[self.surfaces[i].nodes]
-        return faces
+        return self.held_parts @ reaction
 
     def start(self) -> Floats:
         """Return the nodal start temperatures, K, shape (N,).
@@ -206,7 +221,9 @@ class Conduction:
         volume, T = np.zeros(self.n), np.zeros(self.n)
         heat = np.zeros(self.n)
         for share, law, rule in zip(self.parts.volumes, self.problem.start, self.enthalpies, strict=True):
-            mine = np.broadcast_to(_at(law, 0.0, share, np.zeros(len(share.nodes))), share.nodes.shape).astype(np.float64)
+            mine = np.broadcast_to(_at(law, 0.0, share, np.zeros(len(share.nodes))), share.nodes.shape).astype(
+                np.float64
+            )
             volume[share.nodes] += share.size
             T[share.nodes] += share.size * mine
             heat[share.nodes] += share.size * rule.heat(mine, share.x, share.y)

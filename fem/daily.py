@@ -65,8 +65,7 @@ class Daily(Schedule):
         day = np.array(self.daily, dtype=np.float64)
         t = ((first + np.arange(days))[:, None] * DAY + day[:, 0]).ravel() + self.midnight
         v = np.tile(day[:, 1], days)
-        twice = np.append(False, (np.diff(t) <= 0.0) & (np.diff(v) == 0.0))  # 24 h of one day is 0 h of the next
-        return polyline(t[~twice], v[~twice], hold_before=False, hold_after=False, name="daily")
+        return polyline(t, v, hold_before=False, hold_after=False, name="daily")
 
 
 class Wave(Strict):

@@ -9,10 +9,11 @@ from fem.docket_section import DotlessName, Name, Point
 from fem.errors import Said, refusal
 from fem.schedules import Scheduled
 from fem.strict import Strict, fault, raise_all
+from fem.units import Heat
 
 Held = Annotated[Any, Scheduled("temperature")]
 Ambient = Annotated[Any, Scheduled("temperature")]
-FluxIn = Annotated[Any, Scheduled("heat flux")]
+FluxIn = Annotated[Any, Scheduled("heat flux", ("t", "x", "y", "T"))]
 Coefficient = Annotated[Any, Scheduled("film coefficient", ("t", "x", "y", "T"))]
 Emissivity = Annotated[Any, Scheduled("fraction", ("t", "x", "y", "T"))]
 
@@ -84,6 +85,9 @@ class Exposure(Strict):
     flux: FluxIn | None = Field(None, description="Heat flux into the section.")
     film: Film | None = Field(None, description="Coefficient and ambient of a fluid.")
     radiant: Radiant | None = Field(None, description="Emissivity, and temperature of the surroundings.")
+    band: Heat | None = Field(
+        None, description="Band wanted on the heat flow through it, where it differs from that of all exposures."
+    )
 
     @classmethod
     def from_short(cls, data: Any) -> Any:

@@ -95,10 +95,9 @@ def _table(text: str) -> dict[str, Any]:
     try:
         return tomllib.loads(text)
     except (ValueError, RecursionError) as error:  # ValueError: also numbers too long for Python to read
+        what = "nested too deep" if isinstance(error, RecursionError) else str(error)
         allowed = "TOML 1.0 (toml.io)"
-        raise DocketError.single(
-            "text", str(error) or "nested too deep", allowed, "mend the line that is named"
-        ) from error
+        raise DocketError.single("text", what, allowed, "mend the line that is named") from error
 
 
 def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[str, Any]]:
@@ -164,7 +163,7 @@ def to_text(docket: Docket) -> str:
 def update_text(text: str, docket: Docket) -> str:
     """Return the text of a file changed so that it holds the docket; comments and layout stay where nothing changed.
 
-    Arrays of tables that stand mixed (a region, a gauge, a region) are brought together by tomlkit when anything changes.
+    Arrays of tables that stand mixed (a region, a gauge, a region) are brought together when anything changes.
 
     Parameters
     ----------

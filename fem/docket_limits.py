@@ -8,7 +8,7 @@ from pydantic_core import core_schema
 from fem.docket_section import DotlessName, Name
 from fem.errors import Said
 from fem.strict import Strict, fault, raise_all, raise_one
-from fem.units import Length, PositiveDuration, Rate, Temperature, TemperatureDifference, Time, celsius, reading, said
+from fem.units import FileUnits, Length, PositiveDuration, Rate, Temperature, TemperatureDifference, Time, reading, said
 
 Must = Literal[
     "reach", "stay below", "stay above", "hold above", "heat slower than", "cool slower than", "differ less than"
@@ -108,24 +108,22 @@ class Limit(Strict):
         raise_all("limit", faults)
         return self
 
-    def sentence(self) -> str:
-        """Return the limit as a sentence; temperatures in degC, times in s."""
+    def sentence(self, units: FileUnits) -> str:
+        """Return the limit as a sentence in the units of the docket."""
         where = self.at if self.at == "anywhere" else f'"{self.at}"'
-        said = f"{where} must {self.must}"
-        if self.temperature is not None:
-            said += f" {celsius(self.temperature):.6g} °C"
-        if self.rate is not None:
-            said += f" {self.rate * HOUR:.6g} K/h"
+        text = f"{where} must {self.must}"
         if self.other is not None and self.below is not None:
-            said = f'{where} must differ from "{self.other}" by less than {self.below:.6g} K'
+            difference = said(self.below, "temperature difference", units)
+            text = f'{where} must differ from "{self.other}" by less than {difference}'
+        if self.temperature is not None:
+            text += f" {said(self.temperature, 'temperature', units)}"
+        if self.rate is not None:
+            text += f" {said(self.rate, 'heating rate', units)}"
         if self.within is not None:
-            said += f" within {self.within:.6g} s"
+            text += f" within {said(self.within, 'time', units)}"
         if self.at_least is not None:
-            said += f" for at least {self.at_least:.6g} s"
+            text += f" for at least {said(self.at_least, 'time', units)}"
         if self.during is not None:
-            said += f" from {self.during[0]:.6g} s to {self.during[1]:.6g} s"
-        return said
-
-
-HOUR = 3600.0
-"""s."""
+            begin, end = (said(t, "time", units) for t in self.during)
+            text += f" from {begin} to {end}"
+        return text.replace("degC", "°C").replace("degF", "°F")

@@ -53,7 +53,9 @@ class Wanted(Strict):
     """How narrow the bands shall be."""
 
     gauges: TemperatureDifference = Field(1.0, description="At every gauge that states none of its own.")
-    regions: TemperatureDifference | None = Field(None, description="On the highest and lowest temperature of each region.")
+    regions: TemperatureDifference | None = Field(
+        None, description="On the highest and lowest temperature of each region."
+    )
     means: TemperatureDifference | None = Field(None, description="On the mean temperature of each region.")
     heat: Heat | None = Field(None, description="On the heat through each exposure: W/m planar, W for a revolution.")
     stored: Heat | None = Field(None, description="On the stored heat: J/m planar, J for a revolution.")

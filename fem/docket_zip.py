@@ -114,6 +114,4 @@ def _safe(entry: zipfile.ZipInfo, refuse: Refuse) -> str:
         raise refuse(shown(name), "paths that stay inside the zip", "pack the docket again")
     if stat.S_ISLNK(entry.external_attr >> 16):
         raise refuse(shown(name), "files, no links", "pack the file that the link leads to")
-    if entry.flag_bits & 1:
-        raise refuse(shown(name), "files that are not encrypted", "pack the docket without a password")
     return str(path)

@@ -214,11 +214,11 @@ def winding(loop: Sequence[Edge], z: Complexes) -> NDArray[np.int_]:
     z = np.asarray(z, dtype=np.complex128)
     turn = np.zeros(z.shape)
     for edge in loop:
-        turn += np.angle((edge.end - z) / (edge.start - z))
+        u, w = edge.start - z, edge.end - z
+        side = u.real * w.imag - u.imag * w.real + 0.0  # a point on the chord itself counts as left of it, both times
+        turn += np.arctan2(side, u.real * w.real + u.imag * w.imag)
         if edge.centre is not None:
-            chord, w = edge.end - edge.start, z - edge.start
-            side = (chord.real * w.imag - chord.imag * w.real) * math.copysign(1.0, edge.sweep)
-            turn += np.where(
-                (np.abs(z - edge.centre) < edge.radius) & (side < 0.0), math.copysign(2.0 * math.pi, edge.sweep), 0.0
-            )
+            beyond_chord = side < 0.0 if edge.sweep > 0.0 else side >= 0.0
+            bow = beyond_chord & (np.abs(z - edge.centre) < edge.radius)
+            turn += np.where(bow, math.copysign(2.0 * math.pi, edge.sweep), 0.0)
     return np.asarray(np.rint(turn / (2.0 * math.pi)), dtype=np.int_)

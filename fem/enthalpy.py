@@ -77,12 +77,12 @@ class TableEnthalpy:
         inside = np.clip(f, 0.0, 1.0)
         c0, c1 = self._c[cell], self._c[cell + 1]
         H = self._H[cell] + STEP * inside * (c0 + 0.5 * (c1 - c0) * inside)
-        return H + STEP * np.where(f < 0.0, f * c0, np.maximum(f - 1.0, 0.0) * c1)
+        return np.asarray(H + STEP * np.where(f < 0.0, f * c0, np.maximum(f - 1.0, 0.0) * c1))
 
     def slope(self, T: Floats, x: Floats, y: Floats) -> Floats:  # noqa: ARG002
         """Return dH/dT, J/(m3 K), in the shape of T."""
         cell, f = self._locate(T)
-        return self._c[cell] + (self._c[cell + 1] - self._c[cell]) * np.clip(f, 0.0, 1.0)
+        return np.asarray(self._c[cell] + (self._c[cell + 1] - self._c[cell]) * np.clip(f, 0.0, 1.0))
 
 
 class PlacedEnthalpy:

@@ -1,4 +1,4 @@
-"""Links with a left and a right -> faces: connected pieces of one region, each with the loops around it and its holes."""
+"""Links with a left and a right -> faces: connected parts of one region, each with the loop around it and its holes."""
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass

@@ -19,6 +19,7 @@ from fem.study import Study
 from fem.tables import figures
 from fem.verdicts import Verdict
 
+
 @dataclass(frozen=True)
 class Need:
     """How far one goal is from its wanted band.
@@ -75,6 +76,7 @@ def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
     """Return the bands that the docket asks for."""
     wanted, goals = docket.wanted, []
     own = {gauge.name: gauge.band for gauge in docket.gauges}
+    through = {exposure.name: exposure.band for exposure in docket.exposures}
     for key in figures.keys:
         band: float | None = None
         if key.kind == "gauge":
@@ -82,7 +84,7 @@ def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
         elif key.kind in ("highest", "lowest", "mean"):
             band = wanted.regions
         elif key.kind == "flow":
-            band = wanted.heat
+            band = through.get(key.name) or wanted.heat
         elif key.kind == "stored":
             band = wanted.stored
         if band is not None:
@@ -134,5 +136,15 @@ def need_of(goal: Goal, table: Figures) -> Need:
 
 def too_wide(key: Key) -> str:
     """Return a series as words for a sentence."""
-    words = {"gauge": "gauge", "flow": "heat flow through", "heat": "heat through", "stored": "stored heat", "mean": "mean of"}
-    return f'{words.get(key.kind, key.kind)} "{key.name}"' if key.name else f"{words.get(key.kind, key.kind)} of the section"
+    words = {
+        "gauge": "gauge",
+        "flow": "heat flow through",
+        "heat": "heat through",
+        "stored": "stored heat",
+        "mean": "mean of",
+    }
+    return (
+        f'{words.get(key.kind, key.kind)} "{key.name}"'
+        if key.name
+        else f"{words.get(key.kind, key.kind)} of the section"
+    )

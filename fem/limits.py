@@ -86,9 +86,9 @@ def judge_limit(docket: Docket, limit: Limit, figures: Figures) -> Verdict:
     """Return the verdict on one limit."""
     view = _view(figures, subject(docket, limit), limit)
     if limit.must == "reach":
-        return _reach(limit, view, figures.grid.t[0])
+        return _reach(docket, limit, view, figures.grid.t[0])
     if limit.must == "hold above":
-        return _hold(limit, view)
+        return _hold(docket, limit, view)
     sign, threshold = {
         "stay below": (1.0, limit.temperature),
         "stay above": (-1.0, limit.temperature),
@@ -100,33 +100,46 @@ def judge_limit(docket: Docket, limit: Limit, figures: Figures) -> Verdict:
     bound = threshold if sign == 0.0 else sign * threshold
     i = int(np.argmax(values))
     worst, best = float(np.max(values + view.b)), float(np.max(values - view.b))
-    return _verdict(limit, bound - values[i], max(worst - values[i], values[i] - best), float(view.t[i]), None)
+    return _verdict(docket, limit, bound - values[i], max(worst - values[i], values[i] - best), float(view.t[i]), None)
 
 
-def _reach(limit: Limit, view: _View, begin: float) -> Verdict:
+def _reach(docket: Docket, limit: Limit, view: _View, begin: float) -> Verdict:
     by = view.t <= (np.inf if limit.within is None else begin + limit.within)
     i = int(np.argmax(np.where(by, view.v, -np.inf)))
     high, low = float(np.max((view.v + view.b)[by])), float(np.max((view.v - view.b)[by]))
     wide = max(high - view.v[i], view.v[i] - low)
-    crossing = tuple(first_reach(view.t, v, float(limit.temperature or 0.0)) for v in (view.v, view.v + view.b, view.v - view.b))
-    return _verdict(limit, view.v[i] - float(limit.temperature or 0.0), wide, float(view.t[i]), (crossing[0], crossing[1], crossing[2]))
+    crossing = tuple(
+        first_reach(view.t, v, float(limit.temperature or 0.0)) for v in (view.v, view.v + view.b, view.v - view.b)
+    )
+    return _verdict(
+        docket,
+        limit,
+        view.v[i] - float(limit.temperature or 0.0),
+        wide,
+        float(view.t[i]),
+        (crossing[0], crossing[1], crossing[2]),
+    )
 
 
-def _hold(limit: Limit, view: _View) -> Verdict:
+def _hold(docket: Docket, limit: Limit, view: _View) -> Verdict:
     span, threshold = float(limit.at_least or 0.0), float(limit.temperature or 0.0)
     value, i = held_level(view.t, view.v, span)
     high, _ = held_level(view.t, view.v + view.b, span)
     low, _ = held_level(view.t, view.v - view.b, span)
-    return _verdict(limit, value - threshold, max(high - value, value - low), float(view.t[i]), None)
+    return _verdict(docket, limit, value - threshold, max(high - value, value - low), float(view.t[i]), None)
 
 
-def _verdict(limit: Limit, margin: float, band: float, t: float, crossing: tuple[float, float, float] | None) -> Verdict:
+def _verdict(
+    limit: Limit, margin: float, band: float, t: float, crossing: tuple[float, float, float] | None
+) -> Verdict:
     call = Call.too_close
     if margin - band >= 0.0 and np.isfinite(band):
         call = Call.met
     elif margin + band < 0.0 and np.isfinite(band):
         call = Call.not_met
-    return Verdict(limit.name, limit.sentence(), call, float(margin), float(band), t, crossing, limit.rate is not None)
+    return Verdict(
+        limit.name, limit.sentence(docket.units), call, float(margin), float(band), t, crossing, limit.rate is not None
+    )
 
 
 def first_reach(t: Floats, v: Floats, threshold: float) -> float:

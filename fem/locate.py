@@ -35,12 +35,6 @@ def interpolation(mesh: Mesh, points: Floats) -> sp.csr_array:
     return sp.csr_array((clipped.ravel(), (rows, mesh.cells[cells].ravel())), shape=(len(points), len(mesh.points)))
 
 
-def inside(mesh: Mesh, points: Floats) -> NDArray[np.bool_]:
-    """Return which points (n, 2) [m] can be read on the mesh."""
-    points = np.asarray(points, dtype=np.float64).reshape(-1, 2)
-    return _locate(mesh, points)[2] if len(points) else np.zeros(0, dtype=bool)
-
-
 def _locate(mesh: Mesh, points: Floats) -> tuple[NDArray[np.intp], Floats, NDArray[np.bool_]]:
     """Return the best cell of each point (n,), its barycentric coordinates there (n, 3), and whether it may be read there (n,)."""
     corners = mesh.points[mesh.cells]

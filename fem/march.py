@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from fem.conduction import Conduction, Loads
 from fem.factor import Factor, FactorFailed, Factorizer
+from fem.linear import LinearStages, Stages
 from fem.stepping import INSIDE, SDIRK4, Ladder, Steps, Tableau
 
 Floats = NDArray[np.float64]
@@ -94,7 +95,12 @@ class StageSolver:
     def prepare(self, t: float, T: Floats, dt: float, *, fresh: bool) -> None:
         """Have a factor of dH/dT + dt (K + slope) at hand, where dt is gamma times the step [s]."""
         key = float(f"{dt:.10e}")
-        if not fresh and self._factor is not None and self._key == key and (self.problem.linear or self.rate < REUSE_BELOW):
+        if (
+            not fresh
+            and self._factor is not None
+            and self._key == key
+            and (self.problem.linear or self.rate < REUSE_BELOW)
+        ):
             return
         if self.problem.linear and (kept := self.factorizer.recall(key)) is not None:
             self._factor, self._key = kept, key
@@ -119,9 +125,9 @@ class StageSolver:
         return self.factorizer.factor(data).solve(residual[free])
 
     def filter(self, residual: Floats) -> Floats:
-        """Return the free nodes' temperature change that a heat of `residual` [J], (N,), makes, K."""
+        """Return the free nodes' temperature change that a heat of `residual` [J] in them, (n_free,), makes, K."""
         assert self._factor is not None  # noqa: S101 - prepare() has run
-        return self._factor.solve(residual[self.problem.free])
+        return self._factor.solve(residual)
 
     def stage(self, t: float, dt: float, rhs: Floats, T: Floats) -> tuple[Floats, Floats, Loads, sp.csr_array] | None:
         """Solve H(T) - dt (loads - K T) = rhs on the free nodes; None when Newton fails."""
@@ -131,10 +137,10 @@ class StageSolver:
         last = 0.0
         for _ in range(NEWTON_ROUNDS):
             K, loads = problem.stiffness(t, T), problem.loads(t, T)
-            change = self.filter(rhs + dt * (loads.into - K @ T) - problem.heat(T))
+            change = self.filter((rhs + dt * (loads.into - K @ T) - problem.heat(T))[problem.free])
             T[problem.free] += change
             size = float(np.max(np.abs(change), initial=0.0))
-            if problem.linear or size == 0.0:
+            if size == 0.0:
                 return T, problem.heat(T), problem.loads(t, T), K
             if not np.isfinite(size) or (last > 0.0 and size > 2.0 * last):
                 return None
@@ -163,7 +169,13 @@ class March:
     """
 
     def __init__(
-        self, problem: Conduction, *, tolerance: float, steps: Steps | None = None, first: float = 1.0, tableau: Tableau = SDIRK4
+        self,
+        problem: Conduction,
+        *,
+        tolerance: float,
+        steps: Steps | None = None,
+        first: float = 1.0,
+        tableau: Tableau = SDIRK4,
     ) -> None:
         if problem.problem.begin is None or problem.problem.end is None:
             raise ValueError("a march needs a clock; solve a steady problem with fem.steady")
@@ -172,6 +184,7 @@ class March:
         self.begin, self.end = problem.problem.begin, problem.problem.end
         self._steps, self._first = steps, first
         self._solver = StageSolver(problem, NEWTON_PART * tolerance)
+        self._linear = LinearStages(problem, tableau) if problem.linear else None
         self.T = problem.start()
         self._base = problem.capacity(self.T).copy()
         self._H = problem.heat(self.T)
@@ -255,10 +268,10 @@ class March:
         if len(problem.held):
             delta = 1e-6 * (self.end - self.begin)
             rate[problem.held] = (problem.held_values(inside + delta) - self.T[problem.held]) / delta
-            at_held = problem.split_reaction(problem.capacity(self.T) * rate - through)
+            at_held = problem.split_reaction((problem.capacity(self.T) * rate - through)[problem.held])
             self._flow = self._flow + (np.where(at_held == 0.0, 0.0, np.nan) if jump else at_held)
         self._rate = None if jump else rate
-        return problem.split_reaction(self._H - before)
+        return problem.split_reaction((self._H - before)[problem.held])
 
     def _try(self, t0: float, t1: float, *, estimate: bool) -> tuple[Step, float] | None:
         try:
@@ -274,39 +287,49 @@ class March:
         return None
 
     def _stages(self, t0: float, t1: float, *, estimate: bool) -> tuple[Step, float] | None:
-        problem, tableau, dt = self.problem, self.tableau, t1 - t0
-        s = len(tableau.c)
+        dt = t1 - t0
+        if self._linear is not None:
+            stages = self._linear.solve(t0, dt, self.T, self._solver.filter)
+        elif (solved := self._newton_stages(t0, dt)) is not None:
+            stages = solved
+        else:
+            return None
+        problem, T = self.problem, stages.T
+        error = self._error(stages) if estimate else 0.0
+        d1, flow = stages.growth / problem.capacity(T), stages.outside
+        if len(problem.held):
+            before = stages.t - 1e-4 * dt
+            d1[problem.held] = (T[problem.held] - problem.held_values(before)) / (stages.t - before)
+            flow = flow + problem.split_reaction((problem.capacity(T) * d1)[problem.held] - stages.through)
+        weights, nothing = dt * self.tableau.A[-1], np.zeros(len(flow))
+        heat, made = weights @ stages.faces, weights @ stages.sources
+        return Step(t0, t1, self.T, T, self._rate, d1, heat, nothing, made, nothing, flow), error
+
+    def _newton_stages(self, t0: float, dt: float) -> Stages | None:
+        problem, tableau, held = self.problem, self.tableau, self.problem.held
+        s, size, T = len(tableau.c), tableau.gamma * dt, self.T
         F = np.zeros((s, problem.n))
         faces, sources = np.zeros((s, len(problem.problem.faces))), np.zeros((s, len(problem.problem.source)))
-        T = self.T
-        for i in range(s):
-            t = t0 + dt * min(max(tableau.c[i], INSIDE), 1.0 - INSIDE)
+        through = np.empty(0)
+        for i, t in enumerate(tableau.instants(t0, dt)):
             rhs = self._H + dt * (tableau.A[i, :i] @ F[:i])
-            solved = self._solver.stage(t, tableau.gamma * dt, rhs, T)
+            solved = self._solver.stage(t, size, rhs, T)
             if solved is None:
                 return None
             T, H, loads, K = solved
-            F[i] = (H - rhs) / (tableau.gamma * dt)
+            F[i] = (H - rhs) / size
             faces[i], sources[i] = loads.faces, loads.sources
-            if len(problem.held):
-                through = loads.into - K @ T
-                faces[i] += problem.split_reaction(F[i] - through)
-        error = self._error(F, T, dt) if estimate else 0.0
-        d1 = F[-1] / problem.capacity(T)
-        flow = loads.faces.copy()
-        if len(problem.held):
-            before = t - 1e-4 * dt
-            d1[problem.held] = (T[problem.held] - problem.held_values(before)) / (t - before)
-            flow += problem.split_reaction(problem.capacity(T) * d1 - through)
-        weights = dt * tableau.A[-1]
-        nothing = np.zeros(len(flow))
-        return Step(t0, t1, self.T, T, self._rate, d1, weights @ faces, nothing, weights @ sources, nothing, flow), error
+            if len(held):
+                through = (loads.into - K @ T)[held]
+                faces[i] += problem.split_reaction(F[i, held] - through)
+        owed = dt * (tableau.error @ F)
+        return Stages(t, T, F[-1], owed, faces, sources, loads.faces, through)
 
-    def _error(self, F: Floats, T: Floats, dt: float) -> float:
+    def _error(self, stages: Stages) -> float:
         """Return the local error, K: the embedded difference, damped by the step matrix as Hairer and Wanner (II, IV.8) advise."""
         problem = self.problem
-        change = self._solver.filter(dt * (self.tableau.error @ F))
-        weight = np.maximum(problem.capacity(T)[problem.free] / self._base[problem.free], 1.0)
+        change = self._solver.filter(stages.owed[problem.free])
+        weight = np.maximum(problem.capacity(stages.T)[problem.free] / self._base[problem.free], 1.0)
         return float(np.max(np.abs(change) * weight, initial=0.0))
 
     def _advance(self, step: Step, impulse: Floats) -> Step:

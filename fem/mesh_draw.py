@@ -142,13 +142,20 @@ class Drawer:
     def generate(self) -> None:
         """Let gmsh mesh what was drawn."""
         scale, origin, at = self._plan.size, self._origin, self._sizes.at
+        failed: list[BaseException] = []
 
         def size(_dim: int, _tag: int, x: float, y: float, _z: float, _lc: float) -> float:
-            return at(origin + scale * complex(x, y)) / scale
+            try:
+                return at(origin + scale * complex(x, y)) / scale
+            except BaseException as error:  # noqa: BLE001 - through C nothing can be raised, not even Ctrl-C: raised below
+                failed.append(error)
+                return 1.0  # the size of the section: be done soon
 
         self._geometry.set_mesh_size_callback(size, ignore_other_mesh_sizes=True)
         self._gmsh.option.setNumber("Mesh.Algorithm", FRONTAL_DELAUNAY)
         self._gmsh.model.mesh.generate(2)
+        if failed:
+            raise failed[0]
 
     def read(self, drawn: Drawn) -> Raw:
         """Return what gmsh made, entity by entity."""

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.edge import Complexes, Edge, Floats
+from fem.errors import MeshError
 from fem.faces import sectors
 from fem.plan import Plan
 from fem.rays import hits
@@ -27,7 +28,8 @@ FAN = math.radians(15.0)
 """From a re-entrant corner, thickness is looked for in directions this far apart."""
 SPACING = 1.5
 """Samples on a curve are at most this many cell sizes apart."""
-MOST_SAMPLES = 400_000
+MOST_SAMPLES = 100_000
+"""On all curves together; a mesh with more would have about a million cells before any refinement."""
 
 
 class SizeField:
@@ -41,17 +43,22 @@ class SizeField:
     finer : float
         All sizes are divided by it.
 
+    Raises
+    ------
+    MeshError
+        If the mesh would be far too large.
+
     Attributes
     ----------
     z : (n,) complex
         Samples on the curves, m.
     size : (n,) float
-        Wanted there, m.
+        Wanted there, before `finer` divides it, m.
     """
 
     def __init__(self, plan: Plan, *, across: int, finer: float) -> None:
         self._plan, self._across, self._finer = plan, across, finer
-        self._largest = LARGEST * plan.size / finer
+        self._largest = LARGEST * plan.size
         self.nodes, self.links = plan.links()
         self._of_region = [
             [i for i, link in enumerate(self.links) if r in (link.left, link.right)]
@@ -66,7 +73,7 @@ class SizeField:
 
     def at(self, z: complex) -> float:
         """Return the wanted size at a point, m."""
-        return min(self._largest, self._bins.smallest(z))
+        return min(self._largest, self._bins.smallest(z)) / self._finer
 
     def divided(self, curve: int, splits: Sequence[float]) -> Floats:
         """Return the fractions at which a curve gets nodes: 0, 1, the splits, and between them as many as wanted.
@@ -93,12 +100,18 @@ class SizeField:
         curve = np.concatenate([np.full(self._first_count(link.edge), i) for i, link in enumerate(self.links)])
         f = np.concatenate([(np.arange(n) + 0.5) / n for n in (self._first_count(link.edge) for link in self.links)])
         z, size = self._sampled(curve, f)
-        while len(f) < MOST_SAMPLES:
+        while True:
             order = np.lexsort((f, curve))
             curve, f, z, size = curve[order], f[order], z[order], size[order]
             more_curve, more_f = self._between(curve, f, size)
             if not len(more_f):
                 break
+            if len(f) + len(more_f) > MOST_SAMPLES:
+                thin = z[int(np.argmin(size))]
+                raise MeshError(
+                    f"a part at x = {thin.real:.6g} m, y = {thin.imag:.6g} m is so thin for its length that {self._across} cells "
+                    f"across it make about a million cells: leave it out, or give the stock beside it what it adds"
+                )
             more_z, more_size = self._sampled(more_curve, more_f)
             curve, f = np.concatenate((curve, more_curve)), np.concatenate((f, more_f))
             z, size = np.concatenate((z, more_z)), np.concatenate((size, more_size))
@@ -126,7 +139,7 @@ class SizeField:
             mine, edge = curve == i, self.links[i].edge
             z[mine], tangent[mine] = edge.at(f[mine]), edge.tangent(f[mine])
             bend = 2.0 * math.pi * edge.radius / AROUND if edge.centre is not None else np.inf
-            size[mine] = min(self._largest, edge.length, bend / self._finer)
+            size[mine] = min(self._largest, edge.length, bend)
         for sides, inward in (((link.left for link in self.links), 1j), ((link.right for link in self.links), -1j)):
             side = np.array(list(sides))[curve]
             for region, members in enumerate(self._of_region):
@@ -137,7 +150,7 @@ class SizeField:
                     )
                     struck = np.array(members)[hit]
                     thickness = self._without_tips(curve[mine], struck, thickness)
-                    size[mine] = np.minimum(size[mine], thickness / (self._across * self._finer))
+                    size[mine] = np.minimum(size[mine], thickness / self._across)
         return z, size
 
     def _without_tips(self, curve: Ints, struck: Ints, thickness: Floats) -> Floats:
@@ -167,7 +180,7 @@ class SizeField:
                 1e-7 * self._plan.size,
             )
             z.append(complex(self.nodes[sector.node]))
-            size.append(float(thickness.min()) / (self._across * self._finer))
+            size.append(float(thickness.min()) / self._across)
         return np.array(z, dtype=np.complex128), np.array(size)
 
 

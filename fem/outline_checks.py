@@ -49,9 +49,9 @@ def _names(outlines: Sequence[Outline]) -> list[Problem]:
     if not any(outline.solid for outline in outlines):
         found.append(Problem("section", "", "at least one region that is not a void", "draw a region with a stock"))
     for outline in outlines:
+        numbers = {f"edge {k + 1}": k for k in range(len(outline.edges))}
         for i, edge in enumerate(outline.edges):
-            taken = [f"edge {k + 1}" for k in range(len(outline.edges)) if k != i]
-            if edge.name == "*" or edge.name in taken:
+            if edge.name == "*" or numbers.get(edge.name or "", i) != i:
                 what = "any name but * and the number of another edge"
                 found.append(Problem(outline.place(i), f'"{edge.name}"', what, "rename the edge"))
     return found

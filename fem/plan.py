@@ -55,8 +55,8 @@ class Face:
     ----------
     region : int
     loops : tuple of tuple of (curve, forward)
-        The outer loop counter-clockwise, then the loops of its holes clockwise; `forward` tells whether the curve is run
-        from its start.
+        The outer loop counter-clockwise, then the loops of its holes clockwise; `forward` is True where the curve is
+        run from its start.
     """
 
     region: int

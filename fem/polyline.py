@@ -69,7 +69,7 @@ def _slopes(t: Floats, v: Floats) -> Floats:
 
 
 def knots(t: Floats, v: Floats) -> tuple[Break, ...]:
-    """Return the instants at which the polyline through (n,) times and values jumps or kinks; level outside its ends."""
+    """Return the instants at which the polyline through (n,) times and values jumps or kinks; level outside."""
     first = np.flatnonzero(np.append(True, np.diff(t) > 0.0))  # index of the first and the last knot at each instant
     final = np.append(first[1:], len(t)) - 1
     slopes = _slopes(t, v)

@@ -1,4 +1,4 @@
-"""Pose the problem: docket -> plan, laws on regions and faces, gauges. Everything that the section and the docket must agree on is checked here."""
+"""Pose the problem: docket -> plan, laws on regions and faces, gauges. What section and docket must agree on is checked here."""
 
 from dataclasses import dataclass
 
@@ -7,17 +7,16 @@ from numpy.typing import NDArray
 
 from fem.checks.facts import Namer, RegionStock
 from fem.docket import Docket, Exposure, Region, Stretch
-from fem.errors import DocketError, Problem, SectionError
+from fem.errors import DocketError, Problem
 from fem.laws import Law, constant
 from fem.limits import rate_span
-from fem.locate import inside
-from fem.mesh import Mesh
 from fem.problem import Face, Film, Radiant
 from fem.problem import Problem as HeatProblem
 from fem.run import Gauges
 from fem.schedules import law_of
 from fem.section import Plan, plan_of, stretch_label
 from fem.units import to_si
+from fem.where import regions_at
 
 Floats = NDArray[np.float64]
 
@@ -62,7 +61,7 @@ def pose(docket: Docket) -> Posed:
     plan = plan_of(docket)
     regions = [_region(docket, name) for name in plan.region_names]
     faces, problems = _faces(docket, plan)
-    problems += _double_held(plan, faces) + _floating(docket, plan, faces)
+    problems += _double_held(plan, faces) + _floating(docket, plan, faces) + _lost_gauges(docket, plan, namer(docket))
     if problems:
         raise DocketError(problems)
     begin, end = (None, None) if docket.clock is None else (docket.clock.begin, docket.clock.end)
@@ -90,7 +89,9 @@ def pose(docket: Docket) -> Posed:
 def namer(docket: Docket) -> Namer:
     """Return what writes numbers in the docket's units."""
     units = docket.units
-    return Namer(to_si(1.0, units.length, "length"), units.length, to_si(1.0, units.time, "time"), units.time, units.temperature)
+    return Namer(
+        to_si(1.0, units.length, "length"), units.length, to_si(1.0, units.time, "time"), units.time, units.temperature
+    )
 
 
 def _region(docket: Docket, name: str) -> Region:
@@ -151,12 +152,18 @@ def _face(docket: Docket, exposure: Exposure, label: str, curves: tuple[int, ...
         held=None if exposure.held is None else law_of(exposure.held, *span),
         fluxes=() if exposure.flux is None else (law_of(exposure.flux, *span),),
         films=() if film is None else (Film(law_of(film.coefficient, *span), law_of(film.ambient, *span)),),
-        radiants=() if radiant is None else (Radiant(law_of(radiant.emissivity, *span), law_of(radiant.surroundings, *span)),),
+        radiants=()
+        if radiant is None
+        else (Radiant(law_of(radiant.emissivity, *span), law_of(radiant.surroundings, *span)),),
     )
 
 
 def _no_outside(exposure: Exposure, label: str, *, found: bool) -> Problem:
-    why = "lies between two regions all along" if found else "lies on no outside of the section (covered, or inside a void)"
+    why = (
+        "lies between two regions all along"
+        if found
+        else "lies on no outside of the section (covered, or inside a void)"
+    )
     return Problem(
         f'exposure "{exposure.name}", on',
         label,
@@ -210,24 +217,24 @@ def _floating(docket: Docket, plan: Plan, faces: list[Face]) -> list[Problem]:
 # --- gauges -------------------------------------------------------------------------------------------------------------------------
 
 
-def check_gauges(posed: Posed, mesh: Mesh) -> None:
-    """Refuse gauges that lie outside the section.
-
-    Raises
-    ------
-    SectionError
-        With every such gauge and its place.
-    """
-    outside = np.flatnonzero(~inside(mesh, posed.gauges.points))
-    if len(outside):
-        raise SectionError(
-            [
+def _lost_gauges(docket: Docket, plan: Plan, names: Namer) -> list[Problem]:
+    """Refuse gauges outside the section, or not in the region that they name."""
+    problems = []
+    for gauge in docket.gauges:
+        regions = regions_at(plan, gauge.x, gauge.y)
+        place = names.place(gauge.x, gauge.y)
+        if not regions:
+            problems.append(
+                Problem(f'gauge "{gauge.name}", at', place, "a point of the section", "move it onto a region")
+            )
+        elif gauge.region is not None and gauge.region not in regions:
+            allowed = " or ".join(f'"{name}"' for name in regions)
+            problems.append(
                 Problem(
-                    f'gauge "{posed.gauges.names[i]}", at',
-                    posed.names.place(*posed.gauges.points[i]),
-                    "a point of the section",
-                    "move it onto a region",
+                    f'gauge "{gauge.name}", region',
+                    f'"{gauge.region}" at {place}',
+                    f"{allowed}, which lies there",
+                    "move the gauge or drop region",
                 )
-                for i in outside
-            ]
-        )
+            )
+    return problems

@@ -1,4 +1,4 @@
-"""Rays against edges: how far to the first one?"""
+"""Rays against edges: how far it is to the first one."""
 
 from collections.abc import Sequence
 

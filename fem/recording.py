@@ -1,7 +1,7 @@
 """From a judged study to the record that is kept."""
 
 import platform
-from datetime import datetime, timezone
+from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 
 import numpy as np
@@ -21,28 +21,31 @@ from fem.verdicts import Call
 LIBRARIES = ("heatvouch", "numpy", "scipy", "scikit-fem", "pygmsh", "gmsh", "cvxopt")
 
 
-def reasons_of(judgement: Judgement | None, outcome: str, kind: str) -> tuple[Reason, ...]:
-    """Return why the standing is open; empty when nothing is left to close."""
+def reasons_of(judgement: Judgement, outcome: str, kind: str, *, banded: bool) -> tuple[Reason, ...]:
+    """Return why the standing is open; empty when nothing is left to close. `banded`: the study had three meshes."""
     reasons = []
     if kind == "quick look":
         reasons.append(Reason("a quick look makes no claim: one run on one mesh has no band", "vouch for it"))
     if outcome != Outcome.finished.value:
-        reasons.append(Reason(f"the work did not finish: {outcome}", "run it again, with a larger allowance if that ended it"))
-    if judgement is None:
-        return tuple(reasons)
+        reasons.append(
+            Reason(f"the work did not finish: {outcome}", "run it again, with a larger allowance if that ended it")
+        )
+    if not banded:  # without three meshes there is no band, and so nothing that a band could show
+        return tuple(
+            reasons + [Reason(f.message, f.close) for f in judgement.findings if f.blocks and f.check != "outcome"]
+        )
     for verdict in judgement.verdicts:
-        if verdict.call is Call.too_close and kind == "vouch":
+        if verdict.call is Call.too_close:
             reasons.append(
                 Reason(
                     f'limit "{verdict.limit}" is too close to call: the band straddles it',
                     "a larger allowance, or a design with more margin",
                 )
             )
-    if kind == "vouch":
-        for need in judgement.needs:
-            if need.total > 1.0 and need.goal.why == "wanted band":
-                text = f"{too_wide(need.goal.key)}: its band is {need.total:.2g} times the wanted one"
-                reasons.append(Reason(text, "a larger allowance (cells, seconds), or a wider wanted band"))
+    for need in judgement.needs:
+        if need.total > 1.0 and need.goal.why == "wanted band":
+            text = f"{too_wide(need.goal.key)}: its band is {need.total:.2g} times the wanted one"
+            reasons.append(Reason(text, "a larger allowance (cells, seconds), or a wider wanted band"))
     reasons += [Reason(f.message, f.close) for f in judgement.findings if f.blocks]
     return tuple(reasons)
 
@@ -60,14 +63,14 @@ def record_of(
 ) -> Record:
     """Return the record of a study."""
     finest = study.finest
-    reasons = reasons_of(judgement, outcome, kind)
+    reasons = reasons_of(judgement, outcome, kind, banded=len(study.levels) >= 3)
     faces = tuple(f"{face.name} on {face.edge}" for face in problem.faces)
     ledger = ledger_of(finest, faces, finest.mesh.plan.region_names, tuple(law is not None for law in problem.source))
     return Record(
         kind=kind,
         title=docket.title,
         content_hash=content_hash(docket),
-        created=datetime.now(timezone.utc).isoformat(timespec="seconds"),
+        created=datetime.now(UTC).isoformat(timespec="seconds"),
         shelvable=is_shelvable(docket),
         versions=versions(),
         docket_text=to_text(docket) if is_shelvable(docket) else "",

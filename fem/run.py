@@ -97,7 +97,9 @@ class Recorder:
         self._c = conduction
         self._probe: sp.csr_array = interpolation(conduction.mesh, gauges.points)
         regions = conduction.mesh.plan.region_names
-        self._shares = [(name, share.nodes, share.size) for name, share in zip(regions, conduction.parts.volumes, strict=True)]
+        self._shares = [
+            (name, share.nodes, share.size) for name, share in zip(regions, conduction.parts.volumes, strict=True)
+        ]
         if len(regions) > 1:
             volume = np.zeros(conduction.n)
             for _, nodes, size in self._shares:
@@ -105,7 +107,9 @@ class Recorder:
             self._shares.append(("", np.arange(conduction.n), volume))
         problem = conduction.problem
         self._totals = problem.totals()
-        self._sum = np.array([[float(f.name == name) for f in problem.faces] for name in self._totals]).reshape(len(self._totals), len(problem.faces))
+        self._sum = np.array([[float(f.name == name) for f in problem.faces] for name in self._totals]).reshape(
+            len(self._totals), len(problem.faces)
+        )
         self._faces = [f"{f.name} on {f.edge}" for f in problem.faces]
         self._sources = [name for name, law in zip(regions, problem.source, strict=True) if law is not None]
         self._makes = np.array([law is not None for law in problem.source])

@@ -1,4 +1,4 @@
-"""What outlines must be together: nobody wholly covered, nothing thinner than the gap tolerance, no gap left unnoticed."""
+"""What outlines must be together: nobody wholly covered, nothing thinner than the gap tolerance, no gap unnoticed."""
 
 from collections.abc import Iterable, Sequence
 

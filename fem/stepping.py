@@ -40,6 +40,10 @@ class Tableau:
         """Return the diagonal."""
         return float(self.A[0, 0])
 
+    def instants(self, t0: float, dt: float) -> list[float]:
+        """Return the stages' times in the step of size dt from t0, s, all strictly inside it."""
+        return [t0 + dt * min(max(c, INSIDE), 1.0 - INSIDE) for c in self.c.tolist()]
+
 
 SDIRK4 = Tableau(
     A=np.array(
@@ -154,4 +158,3 @@ class Ladder:
         self._k += 1
         self._index *= 2
         return True
-

@@ -1,4 +1,4 @@
-"""Stretches of an outline between two points that need not be vertices, so that moved or inserted vertices matter not."""
+"""Stretches of an outline between two points that need not be vertices: moved or inserted vertices do not matter."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass

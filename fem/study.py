@@ -38,7 +38,7 @@ class Progress:
     seconds_left: float | None
 
 
-class Stopped(Exception):  # noqa: N818 - not an error: the user or the allowance ended the work
+class Stopped(Exception):
     """Work was stopped; carries what the interrupted run had computed.
 
     Attributes
@@ -124,7 +124,7 @@ class Bench:
     @staticmethod
     def work(cells: int, steps: int) -> float:
         """Return the work of a run; sparse Cholesky in 2D grows a little faster than the number of cells."""
-        return float(cells) ** 1.15 * max(steps, 1)
+        return float(float(cells) ** 1.15 * max(steps, 1))
 
     def plan(self, work: float) -> None:
         """Begin a turn of the given work."""
@@ -139,7 +139,15 @@ class Bench:
         left = spent * (1.0 - fraction) / fraction if fraction > 0.01 else None
         self._on_progress(Progress(doing, fraction, left))
 
-    def solve(self, mesh: Mesh, doing: str, *, steps: Steps | None = None, frame_times: Floats | None = None, first: float = 1.0) -> Run:
+    def solve(
+        self,
+        mesh: Mesh,
+        doing: str,
+        *,
+        steps: Steps | None = None,
+        frame_times: Floats | None = None,
+        first: float = 1.0,
+    ) -> Run:
         """Run once on a mesh.
 
         Raises
@@ -155,7 +163,14 @@ class Bench:
             return result
         watch = self._watch(doing, len(mesh.cells), steps)
         result = run(
-            mesh, self.problem, self.gauges, tolerance=self.tolerance, first=first, steps=steps, frame_times=frame_times, watch=watch
+            mesh,
+            self.problem,
+            self.gauges,
+            tolerance=self.tolerance,
+            first=first,
+            steps=steps,
+            frame_times=frame_times,
+            watch=watch,
         )
         self._check(result)
         self._note(result, len(result.steps))
@@ -183,7 +198,9 @@ class Bench:
             now = time.perf_counter()
             if now - last > 0.1:
                 last = now
-                self._tell(doing, min(count / len(steps), 1.0) if steps is not None else (t - begin) / (end - begin), work)
+                self._tell(
+                    doing, min(count / len(steps), 1.0) if steps is not None else (t - begin) / (end - begin), work
+                )
             return now < self.deadline and not (self._stop is not None and self._stop())
 
         return watch
@@ -272,4 +289,3 @@ def split_cells(mesh: Mesh, passes: NDArray[np.int_]) -> Mesh:
         left = np.where(split[parent], left[parent] - 1, left[parent])
         mesh = finer
     return mesh
-

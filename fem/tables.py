@@ -61,10 +61,11 @@ def figures(study: Study, problem: Problem, derived: tuple[Derived, ...] = ()) -
     if len(study.levels) < 3:
         nothing = np.full(value.shape, np.inf)
         return Figures(keys, grid, value, nothing, nothing, np.full(value.shape, np.nan))
-    levels = [rows(r, grid, derived)[1] for r in study.levels]
-    space = three_levels(*levels, grid)
+    coarse, middle, fine = (rows(r, grid, derived)[1] for r in study.levels)
+    space = three_levels(coarse, middle, fine, grid)
     time = np.zeros_like(value)
     if study.timing:
-        part, shape = time_levels(*(rows(r, grid, derived)[1] for r in study.timing), grid)
+        whole, half, quarter = (rows(r, grid, derived)[1] for r in study.timing)
+        part, shape = time_levels(whole, half, quarter, grid)
         value, time = value + shape, part.band
     return Figures(keys, grid, value, space.band, time, space.order)

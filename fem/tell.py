@@ -13,7 +13,9 @@ def found_text(judgement: Judgement, names: Namer) -> str:
         at = names.time(worst.t)
         owed = "time steps" if worst.time > worst.space else "cells"
         if worst.total > 1.0:
-            parts.append(f"widest: {too_wide(worst.goal.key)} at {at}, {worst.total:.2g} times the band asked for, mostly owed by {owed}")
+            parts.append(
+                f"widest: {too_wide(worst.goal.key)} at {at}, {worst.total:.2g} times the band asked for, mostly owed by {owed}"
+            )
         else:
             parts.append(f"every band is within what was asked (widest {worst.total:.2g} of it)")
     close = [v.limit for v in judgement.verdicts if v.call is Call.too_close]

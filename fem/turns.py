@@ -80,11 +80,15 @@ class Turner:
         """Return the turn that looks whether differences between meshes shrink on a finer one, where all else is settled."""
         offer = self._everywhere(study, bench, worst)
         if offer is None:
-            return Turn(found, "stop: a finer mesh, which would show whether errors fall, does not fit the allowance", "spent")
+            return Turn(
+                found, "stop: a finer mesh, which would show whether errors fall, does not fit the allowance", "spent"
+            )
         then = "split every cell, since differences between meshes do not yet shrink as they must"
         return Turn(found, then, "everywhere")
 
-    def _offers(self, study: Study, judgement: Judgement, bench: Bench, worst: Need, *, stalled: bool) -> list[Turn | None]:
+    def _offers(
+        self, study: Study, judgement: Judgement, bench: Bench, worst: Need, *, stalled: bool
+    ) -> list[Turn | None]:
         if not study.levels or len(study.levels) < 3:
             return []
         if study.timing and worst.time > TIME_SHARE * worst.total:
@@ -104,7 +108,9 @@ class Turner:
         seconds = bench.pace * bench.work(cells, len(study.finest.steps))
         if not self.fits(cells, seconds):
             return None
-        return Turn("", f"split every cell ({cells} on the finest mesh), since {worst.goal.why} asks for it", "everywhere")
+        return Turn(
+            "", f"split every cell ({cells} on the finest mesh), since {worst.goal.why} asks for it", "everywhere"
+        )
 
     def _cells(self, study: Study, judgement: Judgement, bench: Bench) -> Turn | None:
         mesh = study.levels[0].mesh
@@ -137,10 +143,16 @@ class Turner:
             inside = (frames[: len(doubt)] >= early) & (frames[: len(doubt)] <= float(grid.t[when].max()))
             if not inside.any():
                 inside[min(int(np.searchsorted(frames, grid.t[when].max())), len(inside) - 1)] = True
-            kelvin = AIM * need.goal.wanted if need.goal.key.kind in ("gauge", "highest", "lowest", "mean", "difference") else None
+            kelvin = (
+                AIM * need.goal.wanted
+                if need.goal.key.kind in ("gauge", "highest", "lowest", "mean", "difference")
+                else None
+            )
             worst = doubt[inside].max(axis=0)
             # A goal that is not a temperature has no scale in kelvin: aim at the doubt's own worst, less what it must fall by.
-            over = np.maximum(over, worst / (kelvin if kelvin is not None else 0.5 * AIM * worst.max() / max(need.space, 1.0)))
+            over = np.maximum(
+                over, worst / (kelvin if kelvin is not None else 0.5 * AIM * worst.max() / max(need.space, 1.0))
+            )
         return over
 
     def _steps(self, study: Study, bench: Bench, worst: Need) -> Turn | None:

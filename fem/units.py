@@ -9,98 +9,51 @@ import functools
 import math
 import numbers
 import re
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from fractions import Fraction
 from typing import Annotated, Any
 
 from pydantic_core import core_schema
 
-from fem.errors import DocketError, Said, refusal, shown
+from fem.errors import Said, refusal
+from fem.file_units import LENGTHS, SI, TEMPERATURES, TIMES, FileUnits, Reading, reading
 from fem.kinds import KINDS
 from fem.unit_text import is_unit_text, tidy_unit
 
-LENGTHS = ("mm", "cm", "m", "in")
-TIMES = ("s", "min", "h")
-TEMPERATURES = ("degC", "K", "degF")
-
-
-@dataclass(frozen=True)
-class FileUnits:
-    """The units in which a file speaks; the default is SI and kelvin.
-
-    Attributes
-    ----------
-    length : {"mm", "cm", "m", "in"}
-    time : {"s", "min", "h"}
-    temperature : {"degC", "K", "degF"}
-
-    Raises
-    ------
-    DocketError
-        If one is not among these.
-    """
-
-    length: str = "m"
-    time: str = "s"
-    temperature: str = "K"
-
-    def __post_init__(self) -> None:
-        for name, choices in (("length", LENGTHS), ("time", TIMES), ("temperature", TEMPERATURES)):
-            given = getattr(self, name)
-            tidy = tidy_unit(given) if isinstance(given, str) else given
-            if tidy not in choices:
-                raise DocketError.single(
-                    f"docket, {name}",
-                    shown(given),
-                    ", ".join(choices),
-                    f"write {name} = {choices[0]!r} or another of these",
-                )
-            object.__setattr__(self, name, tidy)
-
-    def of(self, kind: str) -> str:
-        """Return the unit of a bare number of this kind, as pint reads it; a difference never has an offset."""
-        step = {"degC": "K", "K": "K", "degF": "delta_degF"}[self.temperature]
-        own = {
-            "length": self.length,
-            "time": self.time,
-            "temperature": self.temperature,
-            "temperature difference": step,
-            "heating rate": f"{step}/{self.time}",
-        }
-        return own.get(kind, KINDS[kind].si)
-
-
-SI = FileUnits()
-
-
-@dataclass(frozen=True)
-class Reading:
-    """Validation context of a docket: more than its units.
-
-    Attributes
-    ----------
-    units : FileUnits
-        Of bare numbers.
-    kind : str
-        What the values of the schedule are that is being read; empty outside one.
-    logs : object or None
-        Where logs are found (`fem.logs.LogFolder`); None while a part is made on its own in Python.
-    """
-
-    units: FileUnits = SI
-    kind: str = ""
-    logs: Any = None
-
-    def of_kind(self, kind: str) -> "Reading":
-        """Return the same reading inside a schedule of values of this kind."""
-        return replace(self, kind=kind)
-
-
-def reading(context: Any) -> Reading:
-    """Return the context of a validation as a `Reading`; none at all means Python, SI and kelvin."""
-    if isinstance(context, Reading):
-        return context
-    return Reading(units=context if isinstance(context, FileUnits) else SI)
+__all__ = [
+    "LENGTHS",
+    "SI",
+    "TEMPERATURES",
+    "TIMES",
+    "Conductivity",
+    "Density",
+    "Duration",
+    "FileUnits",
+    "FilmCoefficient",
+    "Flux",
+    "Fraction01",
+    "Heat",
+    "Length",
+    "Number",
+    "PositiveDuration",
+    "PositiveLength",
+    "Quantity",
+    "Rate",
+    "Reading",
+    "Seconds",
+    "SpecificHeat",
+    "Temperature",
+    "TemperatureDifference",
+    "Time",
+    "VolumePower",
+    "celsius",
+    "in_unit",
+    "reading",
+    "said",
+    "scale_of",
+    "to_si",
+    "written",
+]
 
 
 @functools.cache

@@ -11,8 +11,8 @@ from threadpoolctl import threadpool_limits
 from fem.docket import Docket
 from fem.judge import Judgement, judge
 from fem.march import Outcome
-from fem.mesh import Mesh, make_mesh
-from fem.pose import Posed, check_gauges, pose
+from fem.mesh import make_mesh
+from fem.pose import Posed, pose
 from fem.record import Record, TurnNote
 from fem.recording import record_of
 from fem.study import Bench, Progress, Stopped, Study
@@ -27,7 +27,9 @@ STEP_PART = 0.2
 """Local error per step as a part of the narrowest wanted band: the time part then stays well below the space part."""
 
 
-def vouch(docket: Docket, *, on_progress: OnProgress | None = None, on_turn: OnTurn | None = None, stop: Stop | None = None) -> Record:
+def vouch(
+    docket: Docket, *, on_progress: OnProgress | None = None, on_turn: OnTurn | None = None, stop: Stop | None = None
+) -> Record:
     """Earn the docket's numbers: a record with a band on each, and a standing.
 
     Parameters
@@ -51,7 +53,7 @@ def vouch(docket: Docket, *, on_progress: OnProgress | None = None, on_turn: OnT
         turner = Turner(docket.allowance, began)
         notes: list[TurnNote] = []
         try:
-            study = bench.first(_mesh(posed))
+            study = bench.first(make_mesh(posed.plan, gauges=posed.gauges.points))
         except Stopped as stopped:
             return _unfinished(posed, stopped, began, "vouch")
         outcome = Outcome.finished.value
@@ -81,21 +83,17 @@ def look(docket: Docket, *, on_progress: OnProgress | None = None, stop: Stop | 
         posed = pose(docket)
         bench = _bench(posed, on_progress, stop, began + docket.allowance.seconds)
         try:
-            study = bench.look(_mesh(posed))
+            study = bench.look(make_mesh(posed.plan, gauges=posed.gauges.points))
         except Stopped as stopped:
             return _unfinished(posed, stopped, began, "quick look")
         return _record(posed, study, _judge(posed, study), "quick look", study.finest.outcome.value, (), began)
 
 
-def _mesh(posed: Posed) -> Mesh:
-    mesh = make_mesh(posed.plan, gauges=posed.gauges.points)
-    check_gauges(posed, mesh)
-    return mesh
-
-
 def _bench(posed: Posed, on_progress: OnProgress | None, stop: Stop | None, deadline: float) -> Bench:
     tolerance = STEP_PART * posed.narrowest
-    return Bench(posed.problem, posed.gauges, tolerance=tolerance, deadline=deadline, on_progress=on_progress, stop=stop)
+    return Bench(
+        posed.problem, posed.gauges, tolerance=tolerance, deadline=deadline, on_progress=on_progress, stop=stop
+    )
 
 
 def _judge(posed: Posed, study: Study) -> Judgement:
@@ -118,4 +116,6 @@ def _record(
     posed: Posed, study: Study, judgement: Judgement, kind: str, outcome: str, notes: tuple[TurnNote, ...], began: float
 ) -> Record:
     seconds = time.perf_counter() - began
-    return record_of(posed.docket, posed.problem, study, judgement, kind=kind, outcome=outcome, turns=notes, seconds=seconds)
+    return record_of(
+        posed.docket, posed.problem, study, judgement, kind=kind, outcome=outcome, turns=notes, seconds=seconds
+    )

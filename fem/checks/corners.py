@@ -25,7 +25,9 @@ def check(facts: Facts) -> list[Finding]:
 def _reentrant(facts: Facts) -> list[Finding]:
     if len(facts.study.levels) < 3:
         return []
-    wanted = min((goal.wanted for goal in facts.goals if goal.key.kind in ("gauge", "highest", "lowest")), default=np.inf)
+    wanted = min(
+        (goal.wanted for goal in facts.goals if goal.key.kind in ("gauge", "highest", "lowest")), default=np.inf
+    )
     middle = facts.study.levels[-2].mesh
     doubt = map_doubt(facts.study)
     found = []
@@ -37,12 +39,12 @@ def _reentrant(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "corner",
-                False,
                 f"re-entrant corner of {np.rad2deg(angle):.0f} degrees at {facts.names.place(x, y)}: the temperature there is finite and "
                 f"in doubt by {facts.names.difference(near)}; the heat flux density at the point has no finite value and so no band",
                 "",
                 float(x),
                 float(y),
+                blocks=False,
             )
         )
     return found
@@ -54,7 +56,9 @@ def reentrant_nodes(facts: Facts) -> list[tuple[int, float]]:
     p = mesh.points[mesh.cells]
     ahead, behind = np.roll(p, -1, axis=1) - p, np.roll(p, 1, axis=1) - p
     cosine = (ahead * behind).sum(axis=2) / (np.linalg.norm(ahead, axis=2) * np.linalg.norm(behind, axis=2))
-    angle = np.bincount(mesh.cells.ravel(), weights=np.arccos(np.clip(cosine, -1.0, 1.0)).ravel(), minlength=len(mesh.points))
+    angle = np.bincount(
+        mesh.cells.ravel(), weights=np.arccos(np.clip(cosine, -1.0, 1.0)).ravel(), minlength=len(mesh.points)
+    )
     corners = _vertices(facts)
     return [(int(n), float(angle[n])) for n in corners if REENTRANT < angle[n] < 2.0 * np.pi - 1e-6]
 
@@ -77,7 +81,8 @@ def _held_jumps(facts: Facts) -> list[Finding]:
     t = 0.5 * ((facts.problem.begin or 0.0) + (facts.problem.end or 0.0))
     for i, one in enumerate(held):
         for other in held[i + 1 :]:
-            shared = np.intersect1d(*(np.unique(mesh.facets[np.isin(mesh.curve, f.curves)]) for f in (one, other)))
+            nodes, others = (np.unique(mesh.facets[np.isin(mesh.curve, f.curves)]) for f in (one, other))
+            shared = np.intersect1d(nodes, others)
             for node in shared:
                 x, y = mesh.points[node]
                 a, b = (float(f.held(t=t, x=x, y=y)) for f in (one, other) if f.held is not None)
@@ -90,9 +95,9 @@ def _jump_finding(facts: Facts, faces: tuple[str, str], place: tuple[float, floa
     asked = {goal.key.name.split(" on ")[0] for goal in facts.goals if goal.key.kind in ("flow", "heat")}
     return Finding(
         "corner",
-        bool(asked & set(faces)),
-        f'held temperatures that differ by {facts.names.difference(gap)} meet at {facts.names.place(*place)}: the heat through "{faces[0]}" and '
-        f'"{faces[1]}" has no finite value there, and so no band',
+        f"held temperatures that differ by {facts.names.difference(gap)} meet at {facts.names.place(*place)}: "
+        f'the heat through "{faces[0]}" and "{faces[1]}" has no finite value there, and so no band',
         "put a film, or a ramp of the held temperature, between them",
         *place,
+        blocks=bool(asked & set(faces)),
     )

@@ -26,17 +26,20 @@ def check(facts: Facts) -> list[Finding]:
     low, high, slack = bounds(facts)
     found = []
     hot, cold = int(np.argmax(run.peak)), int(np.argmin(run.low))
-    for excess, node, word in ((run.peak[hot] - high, hot, "above the highest"), (low - run.low[cold], cold, "below the lowest")):
+    for excess, node, word in (
+        (run.peak[hot] - high, hot, "above the highest"),
+        (low - run.low[cold], cold, "below the lowest"),
+    ):
         if excess > slack:
             x, y = run.mesh.points[node]
             found.append(
                 Finding(
                     "extremes",
-                    True,
                     f"a temperature at {names.place(x, y)} lies {names.difference(excess)} {word} that the data allow",
                     "refine the mesh there; if it stays, a property or an exposure is not what was meant",
                     float(x),
                     float(y),
+                    blocks=True,
                 )
             )
     return found
@@ -61,10 +64,10 @@ def bounds(facts: Facts) -> tuple[float, float, float]:
         for flux in face.fluxes:
             q = _values(flux, times, x, y)
             heated, cooled = heated or bool(q.max() > 0), cooled or bool(q.min() < 0)
-    for region, law in enumerate(problem.source):
-        if law is not None:
+    for region, source in enumerate(problem.source):
+        if source is not None:
             nodes = np.unique(run.mesh.cells[run.mesh.region == region])
-            q = _values(law, times[:: max(1, len(times) // 200)], *run.mesh.points[nodes].T)
+            q = _values(source, times[:: max(1, len(times) // 200)], *run.mesh.points[nodes].T)
             heated, cooled = heated or bool(q.max() > 0), cooled or bool(q.min() < 0)
     return -np.inf if cooled else float(min(lows)), np.inf if heated else float(max(highs)), slack
 

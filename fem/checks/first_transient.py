@@ -23,9 +23,9 @@ def check(facts: Facts) -> list[Finding]:
             found.append(
                 Finding(
                     "first transient",
-                    False,
                     f'gauge "{name}": unresolved first transient, the mesh follows it from {when} after a jump of data; '
                     f"{int(early.sum())} reported values lie before that and rest on their band alone",
+                    blocks=False,
                 )
             )
     return found

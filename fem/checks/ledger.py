@@ -40,9 +40,9 @@ def check(facts: Facts) -> list[Finding]:
     return [
         Finding(
             "ledger",
-            True,
             f"the heat ledger does not close: {ledger.unexplained:.3g} J of {ledger.turned_over:.3g} J turned over "
             f"({100 * ledger.part:.2g} %) is unexplained; {100 * CLOSES:.2g} % is allowed",
             "ask for a narrower band, which also tightens the solution of each step",
+            blocks=True,
         )
     ]

@@ -21,11 +21,11 @@ def check(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "mesh",
-                False,
                 f"flat cells: the smallest angle is {angle[worst]:.1f} degrees at {names.place(x, y)} (wanted: {FLATTEST:.0f} or more)",
                 "",
                 float(x),
                 float(y),
+                blocks=False,
             )
         )
     part = wrong_sign_part(facts)
@@ -33,9 +33,9 @@ def check(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "mesh",
-                False,
                 f"{100 * part:.1f} % of the couplings between nodes have the wrong sign (obtuse cells); "
                 f"the check of extremes watches what that can do",
+                blocks=False,
             )
         )
     return found

@@ -31,11 +31,11 @@ def check(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "order",
-                blocks,
                 f"{goal.key.kind} {goal.key.name}: differences between meshes shrink by order {order:.2f} at {facts.names.time(when)} "
                 f"(theory: 2 where the solution is smooth, less near re-entrant corners and right after jumps): not asymptotic"
                 + ("; the band rests on no theory there" if blocks else "; the band is widened for it"),
                 "more cells near it" if blocks else "",
+                blocks=blocks,
             )
         )
     return found

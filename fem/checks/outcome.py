@@ -15,9 +15,9 @@ def check(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "outcome",
-                True,
                 f"a run on {len(run.mesh.cells)} cells did not finish: {run.outcome.value}; it reached {reached}",
                 "look at what the data do at that time; a table that jumps or a property near zero is the usual cause",
+                blocks=True,
             )
         )
     return found

@@ -24,13 +24,13 @@ def check(facts: Facts) -> list[Finding]:
                 found.append(
                     Finding(
                         "stock range",
-                        True,
                         f'region "{stock.region}" reaches {names.temperature(T)} at {names.place(x, y)}, '
                         f'but the values of "{stock.stock}" are stated only to {names.temperature(end)} '
                         f"({names.difference(excess)} outside)",
                         f'give "{stock.stock}" values for that range, or a stock that has them',
                         float(x),
                         float(y),
+                        blocks=True,
                     )
                 )
     return found

@@ -32,7 +32,9 @@ def show(result: Result) -> None:
         print(f"\n{result.id}: {result.reason}", flush=True)
         return
     print(f"\n{result.id}: {result.standing}, {result.seconds:.1f} s, ledger open by {result.ledger:.1e}")
-    print(f"  {'quantity':22} {'t [s]':>10} {'value':>16} {'expected':>16} {'tolerance':>10} {'band':>10}  within  in band")
+    print(
+        f"  {'quantity':22} {'t [s]':>10} {'value':>16} {'expected':>16} {'tolerance':>10} {'band':>10}  within  in band"
+    )
     for e in result.entries:
         t = "steady" if e.t is None else f"{e.t:g}"
         marks = f"{'yes' if e.within_tol else 'NO':>6}  {'yes' if e.in_band else 'NO':>7}"

@@ -125,7 +125,9 @@ class Case:
 
     def _stock(self, material: dict[str, Any]) -> Stock:
         return Stock(
-            conductivity=self.law(material["k"]), density=self.law(material["rho"]), specific_heat=self.law(material["c"])
+            conductivity=self.law(material["k"]),
+            density=self.law(material["rho"]),
+            specific_heat=self.law(material["c"]),
         )
 
     def _exposures(self) -> list[Exposure]:
@@ -141,8 +143,15 @@ class Case:
             on = tuple(name for curve in edge["curves"] for name in holders[curve])
             for i, condition in enumerate(edge["conditions"]):
                 if condition["type"] != "adiabatic":
-                    found.append(Exposure(name=f"{edge['id']} {i}", on=on, **self._condition(condition)))
+                    name = f"{edge['id']} {i}"
+                    found.append(
+                        Exposure(name=name, on=on, band=self._flow_band(edge["id"]), **self._condition(condition))
+                    )
         return found
+
+    def _flow_band(self, edge: str) -> float | None:
+        tols = [float(e["tol"]) for e in self.case["expected"] if e["quantity"] == "heat_flow" and e["edge"] == edge]
+        return min(tols, default=None)
 
     def _condition(self, condition: dict[str, Any]) -> dict[str, Any]:
         match condition["type"]:
@@ -151,7 +160,9 @@ class Case:
             case "flux":
                 return {"flux": self.law(condition["value"])}
             case "convection":
-                return {"film": Film(coefficient=self.law(condition["h"]), ambient=self.temperature(condition["T_amb"]))}
+                return {
+                    "film": Film(coefficient=self.law(condition["h"]), ambient=self.temperature(condition["T_amb"]))
+                }
             case "radiation":
                 # Another Stefan-Boltzmann constant than ours is carried by the emissivity.
                 ratio = condition.get("sigma", STEFAN_BOLTZMANN) / STEFAN_BOLTZMANN
@@ -193,7 +204,6 @@ class Case:
         return Wanted(
             gauges=gauges if gauges is not None else means if means is not None else 1.0,
             means=means,
-            heat=narrowest("heat_flow"),
             stored=narrowest("stored_energy_change"),
         )
 
@@ -207,7 +217,9 @@ class Case:
                 value, band = record.figures.at(Key("gauge", self.gauge_name(entry)), t)
                 return value - self.offset, band
             case "mean_temperature":
-                name = entry.get("region") or ("" if len(self.case["geometry"]["regions"]) > 1 else record.mesh.region_names[0])
+                name = entry.get("region") or (
+                    "" if len(self.case["geometry"]["regions"]) > 1 else record.mesh.region_names[0]
+                )
                 value, band = record.figures.at(Key("mean", name), t)
                 return value - self.offset, band
             case "stored_energy_change":
@@ -242,16 +254,25 @@ def run_case(case: dict[str, Any]) -> Result:
     adapter = Case(case)
     record = vouch(adapter.docket())
     entries = []
-    scales = {q: max(abs(e["value"]) for e in case["expected"] if e["quantity"] == q) for q in {e["quantity"] for e in case["expected"]}}
+    scales = {
+        q: max(abs(e["value"]) for e in case["expected"] if e["quantity"] == q)
+        for q in {e["quantity"] for e in case["expected"]}
+    }
     for entry in case["expected"]:
         value, band = adapter.read(record, entry)
         error = abs(value - entry["value"])
         slack = rounding_of(entry["value"], scales[entry["quantity"]])
         entries.append(
             Entry(
-                entry["quantity"], entry["t"], float(value), float(entry["value"]), float(entry["tol"]), float(band),
-                bool(error <= entry["tol"]), bool(error <= band + slack),
-            )  # fmt: skip
+                entry["quantity"],
+                entry["t"],
+                float(value),
+                float(entry["value"]),
+                float(entry["tol"]),
+                float(band),
+                bool(error <= entry["tol"]),
+                bool(error <= band + slack),
+            )
         )
     seconds = time.perf_counter() - began
     return Result(case["id"], True, "", seconds, tuple(entries), adapter.steady, record.ledger.part, record.standing)

@@ -27,7 +27,9 @@ class Shape:
 
     def area(self) -> float:
         """Return the enclosed area of a fine polyline, m2."""
-        p = np.array([q for piece in self.pieces for q in ([piece.start] if piece.via is None else [piece.start, piece.via])])
+        p = np.array(
+            [q for piece in self.pieces for q in ([piece.start] if piece.via is None else [piece.start, piece.via])]
+        )
         x, y = p.T
         return float(abs(np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y)) / 2)
 
@@ -69,6 +71,9 @@ def shapes_of(geometry: dict[str, Any]) -> list[Shape]:
     regions = []
     for region in geometry["regions"]:
         outer = Shape(region["id"], region["id"], pieces_of(geometry, region["loops"][0]))
-        holes = [Shape(f"{region['id']} hole {i}", None, pieces_of(geometry, loop)) for i, loop in enumerate(region["loops"][1:], 1)]
+        holes = [
+            Shape(f"{region['id']} hole {i}", None, pieces_of(geometry, loop))
+            for i, loop in enumerate(region["loops"][1:], 1)
+        ]
         regions.append((outer.area(), [outer, *holes]))
     return [shape for _, shapes in sorted(regions, key=lambda entry: -entry[0]) for shape in shapes]

@@ -70,11 +70,11 @@ def make_record() -> Record:
     verdicts = (
         Verdict("steel keeps its strength", '"beam web" stays below 350 °C', Call.met, 143.15, 0.6, 1200.0),
         Verdict("deck soaks", '"deck" reaches 820 °C', Call.too_close, 1.0, 1.4, 1200.0, (1150.0, 1140.0, np.inf)),
-        Verdict("slow enough", '"beam web" heats slower than 10 K/min', Call.not_met, -0.1, 0.002, 900.0, None, True),
+        Verdict("slow enough", '"beam web" heats slower than 10 K/min', Call.not_met, -0.1, 0.002, 900.0, is_rate=True),
     )
     findings = (
-        Finding("order", False, "differences between meshes shrink by order 1.1", ""),
-        Finding("corner", True, "no finite band at a re-entrant corner", "round the corner", 0.1, 0.0),
+        Finding("order", "differences between meshes shrink by order 1.1"),
+        Finding("corner", "no finite band at a re-entrant corner", "round the corner", x=0.1, y=0.0, blocks=True),
     )
     return Record(
         kind="vouch",

@@ -5,6 +5,13 @@ import pytest
 from fem.atomic import whole_file, whole_folder
 
 
+def break_off(writing, error):
+    """Write a part, then fail."""
+    with writing as draft:
+        (draft / "two" if draft.is_dir() else draft).write_text("half")
+        raise error
+
+
 def test_file_is_replaced_whole(tmp_path):
     target = tmp_path / "a.txt"
     target.write_text("old")
@@ -19,9 +26,8 @@ def test_file_is_replaced_whole(tmp_path):
 def test_file_that_breaks_off_leaves_the_old_one(tmp_path, ends):
     target = tmp_path / "a.txt"
     target.write_text("old")
-    with pytest.raises(ends), whole_file(target) as draft:
-        draft.write_text("half")
-        raise ends
+    with pytest.raises(ends):
+        break_off(whole_file(target), ends)
     assert target.read_text() == "old"
     assert [path.name for path in tmp_path.iterdir()] == ["a.txt"]
 
@@ -40,9 +46,8 @@ def test_folder_that_breaks_off_leaves_the_old_one(tmp_path, ends):
     target = tmp_path / "a"
     with whole_folder(target) as draft:
         (draft / "one").write_text("one")
-    with pytest.raises(ends), whole_folder(target) as draft:
-        (draft / "two").write_text("two")
-        raise ends
+    with pytest.raises(ends):
+        break_off(whole_folder(target), ends)
     assert [path.name for path in target.iterdir()] == ["one"]
     assert [path.name for path in tmp_path.iterdir()] == ["a"]
 

@@ -380,18 +380,31 @@ def test_check_refuses_a_section_without_meaning(docket):
 # --- the whole way
 
 
-def start(*words):
-    return subprocess.Popen(
-        [sys.executable, "-m", "fem.cli", *map(str, words)],
-        cwd=ROOT,
-        stdout=subprocess.PIPE,
-        stderr=subprocess.PIPE,
-        text=True,
-        env={**os.environ, "OPENBLAS_NUM_THREADS": "1"},
-    )
+@pytest.fixture
+def start():
+    """Start commands in processes of their own; none outlives its test."""
+    running = []
+
+    def begin(*words):
+        running.append(
+            subprocess.Popen(
+                [sys.executable, "-m", "fem.cli", *map(str, words)],
+                cwd=ROOT,
+                stdout=subprocess.PIPE,
+                stderr=subprocess.PIPE,
+                text=True,
+                env={**os.environ, "OPENBLAS_NUM_THREADS": "1"},
+            )
+        )
+        return running[-1]
+
+    yield begin
+    for work in running:
+        work.kill()
+        work.communicate()
 
 
-def test_docket_to_vouched_record_and_export(docket, tmp_path):
+def test_docket_to_vouched_record_and_export(docket, start, tmp_path):
     work = start("vouch", docket, "--json")
     output, progress = work.communicate(timeout=60)
     assert work.returncode == VOUCHED, progress
@@ -429,7 +442,7 @@ LONG = ("--band", "0.00001", "--cells", "2000000", "--seconds", "300")
 """Narrower than any mesh within reach can give: the work would go on for minutes."""
 
 
-def test_interrupt_leaves_a_record_that_can_be_read(docket):
+def test_interrupt_leaves_a_record_that_can_be_read(docket, start):
     work = start("vouch", docket, *LONG)
     wait_for(work, "turn 1")
     work.send_signal(signal.SIGINT)
@@ -444,7 +457,7 @@ def test_interrupt_leaves_a_record_that_can_be_read(docket):
     assert math.isfinite(float(record.figures.band.max()))  # the turn before was whole
 
 
-def test_second_interrupt_ends_at_once_and_leaves_nothing_half_written(docket):
+def test_second_interrupt_ends_at_once_and_leaves_nothing_half_written(docket, start):
     work = start("vouch", docket, *LONG)
     wait_for(work, "turn 1")
     work.send_signal(signal.SIGINT)

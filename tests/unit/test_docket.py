@@ -309,7 +309,7 @@ LIMIT = {
 @pytest.mark.parametrize("must", LIMIT)
 def test_limit_needs_its_keys_and_no_others(must):
     limit = Limit(name="l", at="web", must=must, **LIMIT[must])
-    assert limit.sentence()
+    assert limit.sentence(FileUnits())
     for key in NEEDED[must]:
         rest = {k: v for k, v in LIMIT[must].items() if k != key}
         assert ((key,), "refused") in refused(Limit, name="l", at="web", must=must, **rest)
@@ -323,12 +323,14 @@ def test_limit_table_is_complete():
 
 
 def test_limit_sentences_read():
-    assert (
-        Limit(name="l", at="web", must="stay below", temperature="350 degC").sentence()
-        == '"web" must stay below 350 °C'
-    )
-    sentence = Limit(name="l", at="anywhere", must="reach", temperature=373.15, within=60.0).sentence()
-    assert sentence == "anywhere must reach 100 °C within 60 s"
+    units = FileUnits("mm", "min", "degC")
+    below = Limit(name="l", at="web", must="stay below", temperature="350 degC")
+    assert below.sentence(units) == '"web" must stay below 350 °C'
+    assert below.sentence(FileUnits("in", "h", "degF")) == '"web" must stay below 662 °F'
+    reach = Limit(name="l", at="anywhere", must="reach", temperature=373.15, within=60.0)
+    assert reach.sentence(units) == "anywhere must reach 100 °C within 1 min"
+    rate = Limit(name="l", at="web", must="heat slower than", rate="5 K/min")
+    assert rate.sentence(units) == '"web" must heat slower than 5 K/min'
 
 
 def test_limit_refuses_itself_and_times_that_go_back():

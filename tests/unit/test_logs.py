@@ -177,9 +177,13 @@ def test_folder(tmp_path):
     "name", ["../a.csv", "/etc/hosts", "sub/../../a.csv", "..\\a.csv", "C:\\a.csv", "C:a.csv", "."]
 )
 def test_paths_that_lead_out_are_refused(tmp_path, name):
-    for place in (LogFolder(tmp_path), LogFolder(members={"a.csv": b""})):
-        with pytest.raises(DocketError):
+    inside = tmp_path / "inside"
+    (inside / "sub").mkdir(parents=True)
+    (tmp_path / "a.csv").write_text("t,v\n0,1\n1,2\n")
+    for place in (LogFolder(inside), LogFolder(members={"a.csv": b"", "../a.csv": b""})):
+        with pytest.raises(DocketError) as caught:
             place.read(name)
+        assert "inside it" in str(caught.value)
 
 
 def test_missing_log_names_the_nearest(tmp_path):

@@ -5,11 +5,13 @@ import math
 import numpy as np
 import pytest
 
+from fem.docket import Docket, Exposure, Region, Section, Start, Stretch
 from fem.edge import Edge, arc_through, crossings, winding
 from fem.errors import SectionError
 from fem.gmsh_session import gmsh_session
 from fem.plan import Plan
-from fem.section import OutlineEdge, OutlineStretch, build_plan
+from fem.section import Outline, OutlineEdge, OutlineStretch, build_plan, plan_of, stretch_label
+from fem.stock import Stock
 from tests.support.shapes import disc, moved, outline, rect, ring_sector
 
 ROUNDING = 1e-12  # relative: sums of a few dozen float64 terms
@@ -178,6 +180,25 @@ def test_stretch_of_nobody_and_of_no_length_are_refused():
     assert [p.value for p in problems] == ['"b"', "a stretch of no length"]
 
 
+def test_docket_gives_the_plan_with_its_voids_arcs_and_stretches():
+    warm = Stretch(region="wall", start=(0.2, 0.0), end=(0.7, 0.0))
+    wall = Region(name="wall", stock="brick", outline=((0, 0, "foot"), (1, 0), (1, 0.5), (0, 0.5)))
+    half = ((0.4, 0.25, "rim", {"via": (0.5, 0.15)}), (0.6, 0.25, "rim", {"via": (0.5, 0.35)}))
+    docket = Docket(
+        section=Section(kind="planar", regions=(wall, Region(name="duct", stock=None, outline=half))),
+        stock={"brick": Stock(conductivity=1.0, density=2000.0, specific_heat=900.0)},
+        exposures=(Exposure(name="floor", on=(warm, "wall.foot"), held=300.0),),
+        clock=None,
+        start=Start(everywhere=300.0),
+    )
+    plan = plan_of(docket)
+    assert plan.region_names == ("wall",)
+    assert area_of(plan, "wall") == pytest.approx(0.5 - math.pi * 0.01, rel=ROUNDING)
+    assert length_of(plan, stretch_label(warm)) == pytest.approx(0.5, rel=ROUNDING)
+    assert length_of(plan, "duct.rim") == pytest.approx(0.2 * math.pi, rel=ROUNDING)
+    assert plan.gap_tolerance == docket.section.gap_tolerance
+
+
 # --- invariance ---
 
 SHAPES = [
@@ -190,10 +211,8 @@ SHAPES = [
 
 
 def facts(plan: Plan):
-    curves = sorted(
-        (tuple(sorted(c.labels)), c.kind, round(c.length, 9), tuple(sorted((c.left, c.right)))) for c in plan.curves
-    )
-    return plan.region_names, curves, plan.hidden
+    """Return labels, kind, sides and length of each curve."""
+    return [(sorted(c.labels), c.kind, sorted((c.left, c.right)), c.length) for c in plan.curves]
 
 
 @pytest.mark.parametrize(
@@ -204,11 +223,10 @@ def test_moved_sections_give_the_same_plan(turn, mirror, scale, shift):
     plan = build_plan(SHAPES)
     other = build_plan([moved(s, turn, mirror, shift, scale) for s in SHAPES])
     assert other.region_area / scale**2 == pytest.approx(plan.region_area, rel=1e-9)
-    back = facts(build_plan([moved(s, 0, False, (0, 0), 1.0) for s in SHAPES]))
-    names, curves, hidden = facts(other)
-    assert (names, hidden) == (back[0], back[2])
-    assert [(c[0], c[1], c[3]) for c in sorted(curves)] == [(c[0], c[1], c[3]) for c in sorted(back[1])]
-    assert sum(c.length for c in other.curves) / scale == pytest.approx(sum(c.length for c in plan.curves), rel=1e-9)
+    for one, two in zip(sorted(facts(plan)), sorted(facts(other)), strict=True):
+        assert one[:3] == two[:3]
+        assert two[3] / scale == pytest.approx(one[3], rel=1e-9)
+    assert other.hidden == plan.hidden
 
 
 # --- against OpenCASCADE, an independent general-purpose geometry kernel ---
@@ -447,8 +465,6 @@ def test_sections_without_a_region_and_names_that_clash_are_refused():
 
 
 def test_outline_needs_one_edge_per_vertex():
-    from fem.section import Outline
-
     with pytest.raises(ValueError, match="3 vertices and 1 edges"):
         Outline("a", True, ((0, 0), (1, 0), (0, 1)), (OutlineEdge(),))
 
@@ -485,3 +501,11 @@ def test_winding_tells_inside_from_outside_near_an_arc():
     z = np.array([0 + 0.999j, 0 + 1.001j, 0 + 0.001j, 0 - 0.001j, 0.8 + 0.59j, 0.8 + 0.61j])
     assert winding(half, z).tolist() == [1, 0, 1, 0, 1, 0]
     assert winding([e.reversed() for e in reversed(half)], z).tolist() == [-1, 0, -1, 0, -1, 0]
+
+
+@pytest.mark.parametrize("turned", [0.0, 0.3, 1.0])
+def test_winding_is_right_on_the_chords_of_arcs(turned):
+    loop = disc("d", 0, 0, 1.0, turned).chain  # both chords run through the middle
+    z = np.exp(1j * turned) * np.linspace(-0.9, 0.9, 19)
+    assert winding(loop, z).tolist() == [1] * 19
+    assert winding([e.reversed() for e in reversed(loop)], z).tolist() == [-1] * 19

@@ -1,6 +1,7 @@
 """Records come back as they were kept; what is damaged, half-written or unknown is refused by name."""
 
 import json
+import os
 import subprocess
 import sys
 from dataclasses import fields, is_dataclass, replace
@@ -130,6 +131,30 @@ def test_arrays_that_do_not_fit_are_refused(record, tmp_path):
     (folder / "SHA256SUMS").write_text("\n".join(mended) + "\n")
     with pytest.raises(StoreError, match="no whole record"):
         store.load(folder)
+
+
+class Trap:
+    """Unpickling it makes a folder: code of whoever wrote the file would have run."""
+
+    def __init__(self, made):
+        self.made = made
+
+    def __reduce__(self):
+        return os.mkdir, (str(self.made),)
+
+
+def test_pickled_array_is_refused_and_never_opened(record, tmp_path):
+    folder = store.save(record, tmp_path / "one")
+    with np.load(folder / "fields.npz") as file:
+        arrays = dict(file)
+    arrays["doubt"] = np.array([Trap(tmp_path / "sprung")], dtype=object)
+    np.savez(folder / "fields.npz", **arrays)
+    lines = (folder / "SHA256SUMS").read_text().splitlines()
+    mended = [f"{store._sum(folder / 'fields.npz')}  fields.npz" if "fields.npz" in line else line for line in lines]
+    (folder / "SHA256SUMS").write_text("\n".join(mended) + "\n")
+    with pytest.raises(StoreError, match="no whole record"):
+        store.load(folder)
+    assert not (tmp_path / "sprung").exists()
 
 
 def test_no_record_is_said_so(tmp_path):

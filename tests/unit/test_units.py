@@ -187,6 +187,14 @@ def test_conversion_is_rounded_once():
     assert Quantity("length").read("0.1 in") == Quantity("length").read("2.54 mm") == 0.00254
 
 
+@given(st.decimals(-1000, 1000, places=4))
+def test_text_is_converted_exactly_and_rounded_once(number):
+    assert Quantity("length").read(f"{number} in") == float(Fraction(number) * Fraction(254, 10_000))
+    kelvin = Fraction(number) + Fraction(27_315, 100)
+    if kelvin >= 0:
+        assert Quantity("temperature").read(f"{number} degC") == float(kelvin)
+
+
 ALL_UNITS = st.builds(FileUnits, st.sampled_from(LENGTHS), st.sampled_from(TIMES), st.sampled_from(TEMPERATURES))
 SCHEDULED = ("length", "time", "temperature", "temperature difference", "heating rate", "heat flux", "heat")
 

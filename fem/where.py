@@ -1,0 +1,27 @@
+"""In which region of a plan a point lies: exact, without a mesh."""
+
+import numpy as np
+
+from fem.edge import Edge, winding
+from fem.section import Plan
+
+ON_BORDER = 1e-9
+"""A point nearer to a curve than this part of the section's size lies on it: rounding of the coordinates."""
+
+
+def regions_at(plan: Plan, x: float, y: float) -> tuple[str, ...]:
+    """Return the region in which a point [m] lies, the regions on whose border it lies, or nothing outside the section."""
+    z = np.array([complex(x, y)])
+    for curve in plan.curves:
+        if curve.edge.distance(z)[0] <= ON_BORDER * plan.size:
+            return tuple(plan.region_names[i] for i in sorted({curve.left, curve.right}) if i >= 0)
+    for face in plan.faces:
+        loops = [[_directed(plan, i, forward=forward) for i, forward in loop] for loop in face.loops]
+        if sum(int(winding(loop, z)[0]) for loop in loops) > 0:
+            return (plan.region_names[face.region],)
+    return ()
+
+
+def _directed(plan: Plan, i: int, *, forward: bool) -> Edge:
+    edge = plan.curves[i].edge
+    return edge if forward else edge.reversed()
