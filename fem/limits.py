@@ -124,13 +124,15 @@ def _reach(docket: Docket, limit: Limit, view: _View, begin: float) -> Verdict:
 def _hold(docket: Docket, limit: Limit, view: _View) -> Verdict:
     span, threshold = float(limit.at_least or 0.0), float(limit.temperature or 0.0)
     value, i = held_level(view.t, view.v, span)
+    if not np.isfinite(value):  # the limit is in force for less than the span
+        return _verdict(docket, limit, -np.inf, 0.0, float(view.t[-1]), None)
     high, _ = held_level(view.t, view.v + view.b, span)
     low, _ = held_level(view.t, view.v - view.b, span)
     return _verdict(docket, limit, value - threshold, max(high - value, value - low), float(view.t[i]), None)
 
 
 def _verdict(
-    limit: Limit, margin: float, band: float, t: float, crossing: tuple[float, float, float] | None
+    docket: Docket, limit: Limit, margin: float, band: float, t: float, crossing: tuple[float, float, float] | None
 ) -> Verdict:
     call = Call.too_close
     if margin - band >= 0.0 and np.isfinite(band):

@@ -36,7 +36,9 @@ def levels(mesh, count=4):
 def last_field(mesh, problem, steps=20):
     """Return the temperatures at the end of a march of equal steps."""
     times = np.linspace(problem.begin, problem.end, steps + 1)
-    return run(mesh, problem, NONE, tolerance=1e-4, steps=Steps(times)).frames[-1]
+    result = run(mesh, problem, NONE, tolerance=1e-4, steps=Steps(times))
+    assert result.frame_times[-1] == problem.end
+    return result.frames[-1]
 
 
 def rms(mesh, error):
