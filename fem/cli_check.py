@@ -186,5 +186,5 @@ def _gauges(docket: Docket, plan: Plan, writer: Writer) -> list[Entry]:
 
 
 def _where(plan: Plan, x: float, y: float) -> str:
-    regions = regions_at(plan, x, y)
-    return regions[0] if len(regions) == 1 else f"border of {' and '.join(regions)}"
+    regions, on_border = regions_at(plan, x, y)
+    return f"border of {' and '.join(regions)}" if on_border else regions[0]

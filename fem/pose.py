@@ -221,7 +221,7 @@ def _lost_gauges(docket: Docket, plan: Plan, names: Namer) -> list[Problem]:
     """Refuse gauges outside the section, or not in the region that they name."""
     problems = []
     for gauge in docket.gauges:
-        regions = regions_at(plan, gauge.x, gauge.y)
+        regions, _ = regions_at(plan, gauge.x, gauge.y)
         place = names.place(gauge.x, gauge.y)
         if not regions:
             problems.append(
