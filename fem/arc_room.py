@@ -5,16 +5,14 @@ from numpy.typing import NDArray
 
 from fem.mesh_data import Floats, Ints, Mesh
 
-ROOM = 0.45
-"""Least area of a child over a quarter of its parent's in a new mesh. Beside the node of a cusp between a line and an
-arc it is 1/2 however short the chords (the arc in the middle of a chord is half as high as the chord), and stays so
-when refined; elsewhere it tends to 1."""
-LEAST_ROOM = 0.2
-"""The same after local refinement, whose halved neighbours may have half of the height over the same chord."""
+ROOM = 0.5 - 1e-6
+"""Least area of a child over a quarter of its parent's. Red refinement divides rise over height of the cells beside a chord
+by twice this, so that nothing gets worse from 1/2 on; below, each refinement is worse than the last. It is 1/2, and a little
+more, beside the node of a cusp, however short the chords: there the arc in the middle of a chord is half as high as it."""
 
 
-def cramped(mesh: Mesh, room: float = ROOM) -> NDArray[np.bool_]:
-    """Return the facets on arcs (F,) that are too long: refinement would leave a child beside them less than `room`."""
+def cramped(mesh: Mesh) -> NDArray[np.bool_]:
+    """Return the facets on arcs (F,) that are too long: refinement would leave a child beside them less than `ROOM`."""
     n = len(mesh.points)
     z = np.asarray(mesh.points[:, 0] + 1j * mesh.points[:, 1], dtype=np.complex128)
     middle = 0.5 * (z[mesh.facets[:, 0]] + z[mesh.facets[:, 1]])
@@ -28,7 +26,7 @@ def cramped(mesh: Mesh, room: float = ROOM) -> NDArray[np.bool_]:
     shift = np.where(facet >= 0, move[facet], 0.0)
     crushed = (shift != 0.0).any(axis=1)
     cells = np.flatnonzero(crushed)
-    crushed[cells] = _least_child(z[mesh.cells[cells]], shift[cells]) < room
+    crushed[cells] = _least_child(z[mesh.cells[cells]], shift[cells]) < ROOM
     long = np.zeros(len(mesh.facets), dtype=bool)
     beside = facet[crushed]
     long[beside[beside >= 0]] = True

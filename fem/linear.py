@@ -16,6 +16,7 @@ from fem.laws import Law
 from fem.stepping import Tableau
 
 Floats = NDArray[np.float64]
+Ints = NDArray[np.intp]
 
 
 @dataclass(frozen=True)
@@ -30,8 +31,8 @@ class Stages:
         Temperatures at the step's end, K.
     growth : (N,) float
         Rate at which each node's heat grows in the last stage, W.
-    owed : (N,) float
-        Heat by which the embedded method differs, J.
+    owed : (n_free,) float
+        Heat of the free nodes by which the embedded method differs, J.
     faces : (s, n_faces) float
         Heat flow in through each face, W.
     sources : (s, n_regions) float
@@ -57,7 +58,7 @@ class _Term:
     """A law of time, and how much of it enters each of some nodes, through which face or in which region."""
 
     law: Law
-    nodes: NDArray[np.intp]
+    nodes: Ints
     weight: Floats
     face: int = -1
     region: int = -1
@@ -77,31 +78,36 @@ def _terms(problem: Conduction) -> Iterator[_Term]:
 
 
 class Drive:
-    """Heat into the nodes, W, that does not depend on their temperature, at one instant."""
+    """Heat into the nodes, W, that does not depend on their temperature, at one instant.
 
-    def __init__(self, problem: Conduction) -> None:
-        self._problem = problem
+    Parameters
+    ----------
+    problem : Conduction
+    order : (N,) int
+        In which the nodes are given back.
+    """
+
+    def __init__(self, problem: Conduction, order: Ints) -> None:
+        self._problem, self._order = problem, order
         terms = list(_terms(problem))
         self._placed = any(term.law.needs & {"x", "y"} for term in terms)
         self._laws = [term.law for term in terms]
         nodes = np.concatenate([np.empty(0, dtype=np.intp), *(term.nodes for term in terms)])
         weight = np.concatenate([np.empty(0), *(term.weight for term in terms)])
         column = np.repeat(np.arange(len(terms)), [len(term.nodes) for term in terms])
-        self._spread = sp.csc_array((weight, (nodes, column)), shape=(problem.n, len(terms)))
-        self._of_face, self._of_region = (np.zeros((m, len(terms))) for m in self._sizes())
+        self._spread = sp.csc_array((weight, (np.argsort(order)[nodes], column)), shape=(problem.n, len(terms)))
+        self._of_face = np.zeros((len(problem.problem.faces), len(terms)))
+        self._of_region = np.zeros((len(problem.problem.source), len(terms)))
         for j, term in enumerate(terms):
             owner, row = (self._of_face, term.face) if term.face >= 0 else (self._of_region, term.region)
             owner[row, j] = term.weight.sum()
         self._last: tuple[list[float], tuple[Floats, Floats, Floats]] | None = None
 
-    def _sizes(self) -> tuple[int, int]:
-        return len(self._problem.problem.faces), len(self._problem.problem.source)
-
     def __call__(self, t: float) -> tuple[Floats, Floats, Floats]:
         """Return heat into the nodes (N,), through the faces (n_faces,) and made in the regions (n_regions,), W, at t [s]."""
         if self._placed:
             loads = self._problem.loads(t, np.zeros(self._problem.n))
-            return loads.into, loads.faces, loads.sources
+            return loads.into[self._order], loads.faces, loads.sources
         values = [float(law(t=t)) for law in self._laws]
         if self._last is None or self._last[0] != values:
             now = np.array(values)
@@ -113,24 +119,29 @@ class LinearStages:
     """Solves the stages of steps of one linear problem.
 
     The stages' changes Z since the step's start obey C Z = dt A F with F the rates of heat, so the rates are C A^-1 Z / dt and need
-    not be kept (Hairer and Wanner, Solving Ordinary Differential Equations II, 2nd ed., IV.8). Everything that only some nodes take
-    part in is gathered for all stages at once, since small products cost more in calls than in arithmetic.
+    not be kept (Hairer and Wanner, Solving Ordinary Differential Equations II, 2nd ed., IV.8). Inside, the free nodes come first
+    and the held ones last, so that each are one block; what only some nodes take part in is done for all stages at once, since
+    small products cost more in calls than in arithmetic.
     """
 
     def __init__(self, problem: Conduction, tableau: Tableau) -> None:
         self._problem, self._tableau = problem, tableau
-        self._back = np.linalg.inv(tableau.A)  # of changes: rates, over C / dt
-        cold, held = np.zeros(problem.n), problem.held
-        self._capacity = problem.capacity(cold)
-        self._drive = Drive(problem)
+        self._back = np.linalg.inv(tableau.A)  # from changes to rates, over C / dt
+        self._order = np.concatenate((problem.free, problem.held))
+        self._n = len(problem.free)
+        cold = np.zeros(problem.n)
+        self._capacity = problem.capacity(cold)[self._order]
+        self._drive = Drive(problem, self._order)
         film = problem.film_coefficients()
-        self._balance = sp.csr_array(problem.stiffness(0.0, cold) + sp.diags_array(film.sum(axis=0)))
+        balance = problem.stiffness(0.0, cold) + sp.diags_array(film.sum(axis=0))
+        self._balance = sp.csr_array(balance[self._order][:, self._order])
+        film = film[:, self._order]
         self._wet = np.unique(film.indices)
         self._film = film[:, self._wet].toarray()
-        rows = self._balance[held]
+        rows = self._balance[self._n :]
         self._near = np.unique(rows.indices)
         self._rows = sp.csr_array(rows[:, self._near])
-        self._free = problem.free if len(held) else slice(None)
+        self._drawing = sp.csc_array(rows[:, : self._n].T)
 
     def solve(self, t0: float, dt: float, T: Floats, solve: Callable[[Floats], Floats]) -> Stages:
         """Return the stages of the step from t0 [s] of size dt [s] and temperatures T [K].
@@ -140,39 +151,40 @@ class LinearStages:
         solve : callable
             From a heat of the free nodes [J] to their change [K], by the factor of C + gamma dt A.
         """
-        instants, held = self._tableau.instants(t0, dt), self._problem.held
+        n, C, T = self._n, self._capacity, T[self._order]
+        instants = self._tableau.instants(t0, dt)
         drives = [self._drive(t) for t in instants]
+        into = [drive[0] for drive in drives]
         leaving = self._balance @ T
-        Z = np.zeros((len(instants), self._problem.n))
-        if len(held):
-            Z[:, held] = [self._problem.held_values(t) - T[held] for t in instants]
-        self._march(Z, dt, [into for into, _, _ in drives], leaving, solve)
+        Z = np.empty((len(instants), len(T)))
+        if n < len(T):
+            Z[:, n:] = [self._problem.held_values(t) - T[n:] for t in instants]
+        self._march(Z, dt, into, leaving, solve)
 
-        outside = np.array([through for _, through, _ in drives]) - (Z[:, self._wet] + T[self._wet]) @ self._film.T
+        outside = np.array([drive[1] for drive in drives]) - (Z[:, self._wet] + T[self._wet]) @ self._film.T
         faces, through = outside, np.empty(0)
-        if len(held):
-            net = np.array([into[held] for into, _, _ in drives]) - leaving[held] - (self._rows @ Z[:, self._near].T).T
-            growth = self._capacity[held] / dt * (self._back @ Z[:, held])
+        if n < len(T):
+            net = np.array([given[n:] for given in into]) - leaving[n:] - (self._rows @ Z[:, self._near].T).T
+            growth = C[n:] / dt * (self._back @ Z[:, n:])
             faces, through = outside + (growth - net) @ self._problem.held_parts.T, net[-1]
-        growth = self._capacity / dt * (self._back[-1] @ Z)
-        owed = self._capacity * ((self._tableau.error @ self._back) @ Z)
-        sources = np.array([made for _, _, made in drives])
-        return Stages(instants[-1], T + Z[-1], growth, owed, faces, sources, outside[-1], through)
+        owed = C[:n] * ((self._tableau.error @ self._back) @ Z[:, :n])
+        sources = np.array([drive[2] for drive in drives])
+        end, growth = np.empty(len(T)), np.empty(len(T))
+        end[self._order], growth[self._order] = T + Z[-1], C / dt * (self._back[-1] @ Z)
+        return Stages(instants[-1], end, growth, owed, faces, sources, outside[-1], through)
 
     def _march(
         self, Z: Floats, dt: float, into: list[Floats], leaving: Floats, solve: Callable[[Floats], Floats]
     ) -> None:
-        """Fill in the free nodes' changes, Z[:, free]; the held nodes' are given."""
-        size, held, last = self._tableau.gamma * dt, self._problem.held, None
-        moving = bool(len(held)) and bool(Z[:, held].any())
-        if moving:
-            drawn = size * (self._rows.T @ Z[:, held].T)
+        """Fill in the free nodes' changes, Z[:, :n]; the held nodes' are given."""
+        n, size, last = self._n, self._tableau.gamma * dt, None
+        moving = bool(Z[:, n:].any())
         for i in range(len(Z)):
             if into[i] is not last:
-                steady, last = size * (into[i] - leaving), into[i]
-            supply = (-self._tableau.gamma * self._back[i, :i]) @ Z[:i]
-            supply *= self._capacity
+                last, steady = into[i], size * (into[i] - leaving)[:n]
+            supply = (-self._tableau.gamma * self._back[i, :i]) @ Z[:i, :n]
+            supply *= self._capacity[:n]
             supply += steady
             if moving:
-                supply[self._near] -= drawn[:, i]
-            Z[i, self._free] = solve(supply[self._free])
+                supply -= size * (self._drawing @ Z[i, n:])
+            Z[i, :n] = solve(supply)

@@ -20,6 +20,10 @@ NEWTON_PART = 1e-6
 """Newton's remaining error as a part of the step tolerance: small enough for the heat ledger to close to 1e-6 of the heat turned over."""
 SMALLEST_PIECE = 0.1
 """A replayed step on which Newton fails is halved, down to pieces of this part of it."""
+STALLED = 100.0
+"""A change that no longer falls, but is below this multiple of the tolerance (1e-4 of the step's), is rounding and is let pass."""
+SURELY = 0.1
+"""A change that is this part of the tolerance ends Newton's method even when its rate is not known yet."""
 REUSE_BELOW = 0.05
 """A factor from an earlier step is used again while Newton's error shrinks by this factor or better per round."""
 
@@ -137,10 +141,10 @@ class StageSolver:
         last = 0.0
         for _ in range(NEWTON_ROUNDS):
             K, loads = problem.stiffness(t, T), problem.loads(t, T)
-            change = self.filter((rhs + dt * (loads.into - K @ T) - problem.heat(T))[problem.free])
+            change = self.filter((rhs + dt * (loads.into - problem.conducted(K, T)) - problem.heat(T))[problem.free])
             T[problem.free] += change
             size = float(np.max(np.abs(change), initial=0.0))
-            if size == 0.0:
+            if size <= SURELY * self.tolerance:
                 return T, problem.heat(T), problem.loads(t, T), K
             if not np.isfinite(size) or (last > 0.0 and size > 2.0 * last):
                 return None
@@ -150,6 +154,8 @@ class StageSolver:
                 if size * rate / (1.0 - rate) <= self.tolerance:
                     return T, problem.heat(T), problem.loads(t, T), K
             last = size
+        if last <= STALLED * self.tolerance:  # rounding, not Newton's method, is what is left; the ledger shows what it amounts to
+            return T, problem.heat(T), problem.loads(t, T), K
         return None
 
 
@@ -262,7 +268,7 @@ class March:
             self.T[problem.held] = problem.held_values(inside)
             self._H = problem.heat(self.T)
         loads = problem.loads(inside, self.T)
-        through = loads.into - problem.stiffness(inside, self.T) @ self.T
+        through = loads.into - problem.conducted(problem.stiffness(inside, self.T), self.T)
         rate: Floats = through / problem.capacity(self.T)
         self._flow = loads.faces
         if len(problem.held):
@@ -294,13 +300,14 @@ class March:
             stages = solved
         else:
             return None
-        problem, T = self.problem, stages.T
+        problem, held, T = self.problem, self.problem.held, stages.T
         error = self._error(stages) if estimate else 0.0
-        d1, flow = stages.growth / problem.capacity(T), stages.outside
-        if len(problem.held):
+        capacity, flow = problem.capacity(T), stages.outside
+        d1 = stages.growth / capacity
+        if len(held):
             before = stages.t - 1e-4 * dt
-            d1[problem.held] = (T[problem.held] - problem.held_values(before)) / (stages.t - before)
-            flow = flow + problem.split_reaction((problem.capacity(T) * d1)[problem.held] - stages.through)
+            d1[held] = (T[held] - problem.held_values(before)) / (stages.t - before)
+            flow = flow + problem.split_reaction(capacity[held] * d1[held] - stages.through)
         weights, nothing = dt * self.tableau.A[-1], np.zeros(len(flow))
         heat, made = weights @ stages.faces, weights @ stages.sources
         return Step(t0, t1, self.T, T, self._rate, d1, heat, nothing, made, nothing, flow), error
@@ -320,15 +327,15 @@ class March:
             F[i] = (H - rhs) / size
             faces[i], sources[i] = loads.faces, loads.sources
             if len(held):
-                through = (loads.into - K @ T)[held]
+                through = (loads.into - problem.conducted(K, T))[held]
                 faces[i] += problem.split_reaction(F[i, held] - through)
-        owed = dt * (tableau.error @ F)
+        owed = dt * (tableau.error @ F)[problem.free]
         return Stages(t, T, F[-1], owed, faces, sources, loads.faces, through)
 
     def _error(self, stages: Stages) -> float:
         """Return the local error, K: the embedded difference, damped by the step matrix as Hairer and Wanner (II, IV.8) advise."""
         problem = self.problem
-        change = self._solver.filter(stages.owed[problem.free])
+        change = self._solver.filter(stages.owed)
         weight = np.maximum(problem.capacity(stages.T)[problem.free] / self._base[problem.free], 1.0)
         return float(np.max(np.abs(change) * weight, initial=0.0))
 

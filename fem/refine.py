@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 from skfem import MeshTri
 
-from fem.arc_room import LEAST_ROOM, cramped
+from fem.arc_room import cramped
 from fem.mesh_data import Floats, Ints, Mesh
 from fem.mesh_verify import verify
 
@@ -81,7 +81,7 @@ def local(mesh: Mesh, marked: NDArray[np.bool_]) -> tuple[Mesh, Ints]:
     marked = np.asarray(marked, dtype=bool).copy()
     while True:
         finer, parent = _split(mesh, marked)
-        cells = np.isin(np.sort(finer.cells, axis=1), finer.facets[cramped(finer, LEAST_ROOM)]).sum(axis=1) > 1
+        cells = np.isin(np.sort(finer.cells, axis=1), finer.facets[cramped(finer)]).sum(axis=1) > 1
         more = parent[cells]
         if marked[more].all():
             break

@@ -111,6 +111,8 @@ class Recorder:
             len(self._totals), len(problem.faces)
         )
         self._faces = [f"{f.name} on {f.edge}" for f in problem.faces]
+        if len(self._faces) > len(self._totals):
+            self._sum = np.vstack((self._sum, np.eye(len(self._faces))))
         self._sources = [name for name, law in zip(regions, problem.source, strict=True) if law is not None]
         self._makes = np.array([law is not None for law in problem.source])
         self.keys = self._name_rows(gauges.names)
@@ -119,6 +121,8 @@ class Recorder:
         self.heat = np.zeros(len(problem.faces))
         self.made = np.zeros(len(problem.source))
         self._start_heat = 0.0
+        self._last: Step | None = None
+        self._end = (np.empty(0), np.empty(0))  # values and rates of the last step's end
         self.where: list[list[int]] = []
 
     def _name_rows(self, gauges: tuple[str, ...]) -> tuple[Key, ...]:
@@ -135,12 +139,11 @@ class Recorder:
         rate = np.full(self._c.n, np.nan) if d is None else d
         values, rates, nodes = [self._probe @ T], [self._probe @ rate], []
         for _, mine, size in self._shares:
-            Tm = T[mine]
-            high, low = mine[np.argmax(Tm)], mine[np.argmin(Tm)]
-            total = size.sum()
-            values.append(np.array([T[high], T[low], size @ Tm / total]))
-            rates.append(np.array([rate[high], rate[low], size @ rate[mine] / total]))
-            nodes += [int(high), int(low)]
+            Tm, rm = (T, rate) if len(mine) == len(T) else (T[mine], rate[mine])
+            high, low, total = np.argmax(Tm), np.argmin(Tm), size.sum()
+            values.append(np.array([Tm[high], Tm[low], size @ Tm / total]))
+            rates.append(np.array([rm[high], rm[low], size @ rm / total]))
+            nodes += [int(mine[high]), int(mine[low])]
         values.append(np.array([self._c.heat(T).sum() - self._start_heat]))
         rates.append(np.array([self._c.capacity(T) @ rate]))
         return np.concatenate(values), np.concatenate(rates), nodes
@@ -152,13 +155,14 @@ class Recorder:
     def add(self, step: Step) -> None:
         """Append a step."""
         self.heat = self.heat + step.impulse
-        both = np.vstack((self._sum, np.eye(len(self.heat)))) if len(self._faces) > len(self._totals) else self._sum
         dt = step.t1 - step.t0
-        v0, d0, _ = self._state(step.T0, step.d0)
+        smooth = self._last is not None and step.T0 is self._last.T1 and step.d0 is self._last.d1
+        v0, d0 = self._end if smooth else self._state(step.T0, step.d0)[:2]
         v1, d1, nodes = self._state(step.T1, step.d1)
-        heat0, heat1 = both @ self.heat, both @ (self.heat + step.heat)
+        self._last, self._end = step, (v1, d1)
+        heat0, heat1 = self._sum @ self.heat, self._sum @ (self.heat + step.heat)
         made0, made1 = self.made, self.made + step.made
-        flow0, flow1, mean = both @ step.flow0, both @ step.flow, both @ step.heat / dt
+        flow0, flow1, mean = self._sum @ step.flow0, self._sum @ step.flow, self._sum @ step.heat / dt
         made_rate = (step.made / dt)[self._makes]
         self._rows.append(
             (
@@ -219,11 +223,15 @@ def run(
     recorder = Recorder(conduction, gauges)
     start = march.T.copy()
     recorder.begin(start)
-    frames = _Frames(frame_times)
+    frames = _Frames(frame_times, problem)
     peak, low, peak_time = start.copy(), start.copy(), np.full(conduction.n, march.begin)
+    end = start
     for step in march:
         recorder.add(step)
         for T, t in ((step.T0, step.t0), (step.T1, step.t1)):
+            if T is end:
+                continue
+            end = T
             hotter = peak < T
             peak[hotter], peak_time[hotter] = T[hotter], t
             np.minimum(low, T, out=low)
@@ -234,33 +242,44 @@ def run(
     breaks = {b.t: b.jump for b in problem.breaks()}
     gained = conduction.heat(march.T) - conduction.heat(start)
     return Run(
-        mesh, march.outcome, recorder.history(), Steps(np.array(times), breaks), np.array(frames.times),
-        np.array(frames.fields).reshape(-1, conduction.n), peak, low, peak_time, recorder.heat, recorder.made,
+        mesh, march.outcome, recorder.history(), Steps(np.array(times), breaks), frames.times,
+        frames.fields(conduction.n), peak, low, peak_time, recorder.heat, recorder.made,
         float(gained.sum()), float(np.abs(gained).sum()), start,
         time.perf_counter() - began, march.factorizations, recorder.where_of(),
     )  # fmt: skip
 
 
 class _Frames:
-    """Keeps fields at wanted times, or thins all step ends to at most `FRAMES` as they come."""
+    """Keeps fields at wanted times; without them at the begin, the clock's instants and the end, and others thinned to `FRAMES`."""
 
-    def __init__(self, wanted: Floats | None) -> None:
-        self._wanted = None if wanted is None else {float(t) for t in wanted}
-        self.times: list[float] = []
-        self.fields: list[Floats] = []
+    def __init__(self, wanted: Floats | None, problem: Problem) -> None:
+        self._only = None if wanted is None else {float(t) for t in wanted}
+        fixed = problem.instants if len(problem.instants) <= FRAMES else ()
+        self._fixed = {*fixed, problem.begin, problem.end}
+        self._kept: dict[float, Floats] = {}
         self._every, self._count = 1, 0
 
     def offer(self, step: Step) -> None:
-        if self._wanted is not None:
-            if step.t1 in self._wanted:
-                self._keep(step)
-            return
+        if not self._count:
+            self._keep(step.t0, step.T0)
         self._count += 1
-        if self._count % self._every == 0:
-            self._keep(step)
-        if len(self.times) > FRAMES:
-            self.times, self.fields, self._every = self.times[1::2], self.fields[1::2], 2 * self._every
+        if self._count % self._every == 0 or self._only is not None or step.t1 in self._fixed:
+            self._keep(step.t1, step.T1)
+        loose = [t for t in self._kept if t not in self._fixed]
+        if self._only is None and len(loose) > FRAMES:
+            self._every *= 2
+            for t in loose[::2]:
+                del self._kept[t]
 
-    def _keep(self, step: Step) -> None:
-        self.times.append(step.t1)
-        self.fields.append(step.T1)
+    def _keep(self, t: float, T: Floats) -> None:
+        if self._only is None or t in self._only:
+            self._kept[t] = T
+
+    @property
+    def times(self) -> Floats:
+        """Return the times, s, (f,)."""
+        return np.array(list(self._kept), dtype=np.float64)
+
+    def fields(self, n: int) -> Floats:
+        """Return the fields, K, (f, n)."""
+        return np.array(list(self._kept.values()), dtype=np.float64).reshape(-1, n)

@@ -34,7 +34,9 @@ def solve_steady(mesh: Mesh, problem: Problem, gauges: Gauges, *, tolerance: flo
     recorder = Recorder(conduction, gauges)
     recorder.begin(T)
     loads = conduction.loads(0.0, T)
-    flow = loads.faces + conduction.split_reaction((conduction.stiffness(0.0, T) @ T - loads.into)[conduction.held])
+    flow = loads.faces + conduction.split_reaction(
+        (conduction.conducted(conduction.stiffness(0.0, T), T) - loads.into)[conduction.held]
+    )
     still = np.zeros(conduction.n)
     recorder.add(Step(0.0, 1.0, T, T, still, still, flow, 0.0 * flow, loads.sources, flow, flow))
     return Run(
@@ -71,7 +73,7 @@ def _newton(conduction: Conduction, tolerance: float) -> tuple[Floats, Outcome, 
 
 
 def _residual(conduction: Conduction, T: Floats) -> Floats:
-    return np.asarray(conduction.loads(0.0, T).into - conduction.stiffness(0.0, T) @ T)
+    return np.asarray(conduction.loads(0.0, T).into - conduction.conducted(conduction.stiffness(0.0, T), T))
 
 
 def _part(conduction: Conduction, T: Floats, change: Floats, residual: Floats) -> float:

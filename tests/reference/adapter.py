@@ -8,6 +8,7 @@ from dataclasses import asdict, dataclass
 from typing import Any
 
 import numpy as np
+from matplotlib.tri import LinearTriInterpolator, Triangulation
 
 from fem.docket import Clock, Docket, Exposure, Film, Gauge, Radiant, Region, Section, Start, Vertex, Wanted
 from fem.history import Key
@@ -227,7 +228,25 @@ class Case:
             case "heat_flow":
                 parts = [record.figures.at(key, t) for key in self._flows(record, entry["edge"])]
                 return sum(v for v, _ in parts), sum(b for _, b in parts)
+            case "isotherm_position":
+                return self._isotherm(record, entry)
         raise ValueError(f"unknown quantity {entry['quantity']}")
+
+    def _isotherm(self, record: Record, entry: dict[str, Any]) -> tuple[float, float]:
+        """Return where the isotherm crosses a line, and its band: the doubt of the cells along the line over the slope there, m."""
+        a, b = (np.array(p, dtype=float) for p in entry["along"])
+        frame = 0 if entry["t"] is None else int(np.argmin(np.abs(record.fields.times - entry["t"])))
+        s = np.linspace(0.0, 1.0, 4001)
+        line = a + s[:, None] * (b - a)
+        grid = Triangulation(*record.mesh.points.T, record.mesh.cells)
+        T = LinearTriInterpolator(grid, record.fields.T[frame])(*line.T).filled(np.nan) - self.offset
+        length = float(np.linalg.norm(b - a))
+        side = np.sign(T - float(entry["isotherm"]))
+        i = int(np.flatnonzero(side[:-1] * side[1:] <= 0.0)[0])
+        slope = (T[i + 1] - T[i]) / (s[i + 1] - s[i]) / length
+        at = s[i] * length + (float(entry["isotherm"]) - T[i]) / slope
+        doubt = float(record.fields.doubt[grid.get_trifinder()(*line[i])])
+        return at, doubt / abs(slope)
 
     def _flows(self, record: Record, edge: str) -> list[Key]:
         conditions = next(e["conditions"] for e in self.case["edges"] if e["id"] == edge)

@@ -85,6 +85,35 @@ def test_output_has_the_agreed_form(tmp_path):
     assert all(set(entry) == names for entry in done["entries"])
 
 
+def test_the_place_of_an_isotherm_is_read():
+    # A plane wall between 100 and 0 degC is linear: the 25 degC isotherm lies at three quarters of it.
+    curves = {p: {"type": "line", "from": p[0], "to": p[1]} for p in ("ab", "bc", "cd", "da")}
+    held = [
+        {"id": p, "curves": [p], "conditions": [{"type": "temperature", "value": T}]}
+        for p, T in (("da", 100.0), ("bc", 0.0))
+    ]
+    entry = {
+        "quantity": "isotherm_position",
+        "t": None,
+        "value": 0.3,
+        "tol": 1e-6,
+        "isotherm": 25.0,
+        "along": [[0, 0.1], [0.4, 0.1]],
+    }
+    case = {
+        "id": "wall", "title": "wall", "temperature_unit": "degC", "coordinates": "planar",
+        "geometry": {
+            "points": {"a": [0, 0], "b": [0.4, 0], "c": [0.4, 0.2], "d": [0, 0.2]}, "curves": curves,
+            "regions": [{"id": "w", "material": "m", "loops": [["ab", "bc", "cd", "da"]]}],
+        },
+        "materials": {"m": {"k": 1.0, "rho": 1000.0, "c": 1000.0}}, "edges": held,
+        "initial": {}, "analysis": {"type": "steady"}, "expected": [entry],
+    }  # fmt: skip
+    (found,) = run_case(case).entries
+    assert found.within_tol
+    assert found.in_band
+
+
 def test_a_wrong_expectation_is_noticed(tmp_path):
     # A planted fault: the adapter must be able to say no.
     case = json.loads(next(p for p in FILES if p.stem.startswith("P18")).read_text(encoding="utf-8"))
