@@ -5,14 +5,16 @@ from numpy.typing import NDArray
 
 from fem.mesh_data import Floats, Ints, Mesh
 
-ROOM = 0.5 - 1e-6
-"""Least area of a child over a quarter of its parent's. Red refinement divides rise over height of the cells beside a chord
-by twice this, so that nothing gets worse from 1/2 on; below, each refinement is worse than the last. It is 1/2, and a little
-more, beside the node of a cusp, however short the chords: there the arc in the middle of a chord is half as high as it."""
+CORNER_ROOM = 0.5 - 1e-6
+"""Least area of a child at a cell's corner over a quarter of its parent's. Red refinement divides the ratio of rise to height
+beside a chord by twice this, so that nothing gets worse from 1/2 on; below, each refinement is worse than the last. It is 1/2,
+and a little more, at the node of a cusp, however short the chords: there the arc in a chord's middle is half as high as it."""
+MIDDLE_ROOM = 0.2
+"""The same of the child in the middle, which has no chord and so hands nothing on; common practice, no source."""
 
 
 def cramped(mesh: Mesh) -> NDArray[np.bool_]:
-    """Return the facets on arcs (F,) that are too long: refinement would leave a child beside them less than `ROOM`."""
+    """Return the facets on arcs (F,) that are too long: refinement would crush a child beside them."""
     n = len(mesh.points)
     z = np.asarray(mesh.points[:, 0] + 1j * mesh.points[:, 1], dtype=np.complex128)
     middle = 0.5 * (z[mesh.facets[:, 0]] + z[mesh.facets[:, 1]])
@@ -26,7 +28,7 @@ def cramped(mesh: Mesh) -> NDArray[np.bool_]:
     shift = np.where(facet >= 0, move[facet], 0.0)
     crushed = (shift != 0.0).any(axis=1)
     cells = np.flatnonzero(crushed)
-    crushed[cells] = _least_child(z[mesh.cells[cells]], shift[cells]) < ROOM
+    crushed[cells] = _crushed(z[mesh.cells[cells]], shift[cells])
     long = np.zeros(len(mesh.facets), dtype=bool)
     beside = facet[crushed]
     long[beside[beside >= 0]] = True
@@ -44,12 +46,13 @@ def _onto_arc(mesh: Mesh, z: NDArray[np.complex128]) -> NDArray[np.complex128]:
     return on
 
 
-def _least_child(corner: NDArray[np.complex128], shift: NDArray[np.complex128]) -> Floats:
-    """Return the smallest area of the four children of cells (k, 3) over a quarter of the parent's."""
+def _crushed(corner: NDArray[np.complex128], shift: NDArray[np.complex128]) -> NDArray[np.bool_]:
+    """Return which cells (k, 3), the middles of whose sides are shifted, would have a child with too little area."""
     middle = 0.5 * (corner + np.roll(corner, -1, axis=1)) + shift
-    children = [np.column_stack((corner[:, i], middle[:, i], middle[:, i - 1])) for i in range(3)]
-    areas = np.array([_area(child) for child in (*children, middle)])
-    return np.asarray(4.0 * areas.min(axis=0) / _area(corner))
+    quarter = 0.25 * _area(corner)
+    at_corners = np.array([_area(np.column_stack((corner[:, i], middle[:, i], middle[:, i - 1]))) for i in range(3)])
+    tight = at_corners.min(axis=0) < CORNER_ROOM * quarter
+    return np.asarray(tight | (_area(middle) < MIDDLE_ROOM * quarter))
 
 
 def _area(corner: NDArray[np.complex128]) -> Floats:

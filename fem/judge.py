@@ -20,6 +20,10 @@ from fem.tables import figures
 from fem.verdicts import Verdict
 
 
+WANTED = "the wanted band asks for it"
+"""Why a goal is there that the docket states."""
+
+
 @dataclass(frozen=True)
 class Need:
     """How far one goal is from its wanted band.
@@ -88,7 +92,7 @@ def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
         elif key.kind == "stored":
             band = wanted.stored
         if band is not None:
-            goals.append(Goal(key, float(band), "wanted band"))
+            goals.append(Goal(key, float(band), WANTED))
     return goals
 
 

@@ -29,10 +29,10 @@ class Stages:
         Time of the last stage, s.
     T : (N,) float
         Temperatures at the step's end, K.
-    growth : (N,) float
-        Rate at which each node's heat grows in the last stage, W.
+    rate : (N,) float
+        Rate of change of each node that is not held in the last stage, K/s.
     owed : (n_free,) float
-        Heat of the free nodes by which the embedded method differs, J.
+        Heat of the free nodes by which the embedded method differs, J; empty where nobody asked.
     faces : (s, n_faces) float
         Heat flow in through each face, W.
     sources : (s, n_regions) float
@@ -45,7 +45,7 @@ class Stages:
 
     t: float
     T: Floats
-    growth: Floats
+    rate: Floats
     owed: Floats
     faces: Floats
     sources: Floats
@@ -78,13 +78,18 @@ def _terms(problem: Conduction) -> Iterator[_Term]:
 
 
 class Drive:
-    """Heat into the nodes, W, that does not depend on their temperature, at one instant.
+    """Heat into the nodes, W, that does not depend on their temperature.
 
     Parameters
     ----------
     problem : Conduction
     order : (N,) int
-        In which the nodes are given back.
+        In which the nodes are counted.
+
+    Attributes
+    ----------
+    nodes : (n_driven,) int
+        The nodes that are given any, in that order.
     """
 
     def __init__(self, problem: Conduction, order: Ints) -> None:
@@ -92,27 +97,27 @@ class Drive:
         terms = list(_terms(problem))
         self._placed = any(term.law.needs & {"x", "y"} for term in terms)
         self._laws = [term.law for term in terms]
-        nodes = np.concatenate([np.empty(0, dtype=np.intp), *(term.nodes for term in terms)])
+        place = np.argsort(order)
+        all_nodes = place[np.concatenate([np.empty(0, dtype=np.intp), *(term.nodes for term in terms)])]
+        self.nodes, node = np.unique(all_nodes, return_inverse=True)
         weight = np.concatenate([np.empty(0), *(term.weight for term in terms)])
-        column = np.repeat(np.arange(len(terms)), [len(term.nodes) for term in terms])
-        self._spread = sp.csc_array((weight, (np.argsort(order)[nodes], column)), shape=(problem.n, len(terms)))
-        self._of_face = np.zeros((len(problem.problem.faces), len(terms)))
-        self._of_region = np.zeros((len(problem.problem.source), len(terms)))
+        term_of = np.repeat(np.arange(len(terms)), [len(term.nodes) for term in terms])
+        self._spread = sp.csr_array((weight, (node, term_of)), shape=(len(self.nodes), len(terms)))
+        self._of_face = np.zeros((len(terms), len(problem.problem.faces)))
+        self._of_region = np.zeros((len(terms), len(problem.problem.source)))
         for j, term in enumerate(terms):
             owner, row = (self._of_face, term.face) if term.face >= 0 else (self._of_region, term.region)
-            owner[row, j] = term.weight.sum()
-        self._last: tuple[list[float], tuple[Floats, Floats, Floats]] | None = None
+            owner[j, row] = term.weight.sum()
 
-    def __call__(self, t: float) -> tuple[Floats, Floats, Floats]:
-        """Return heat into the nodes (N,), through the faces (n_faces,) and made in the regions (n_regions,), W, at t [s]."""
+    def __call__(self, instants: list[float]) -> tuple[Floats, Floats, Floats]:
+        """Return heat into `nodes` (s, n_driven), through faces (s, n_faces), made in regions (s, n_regions), W, at instants [s]."""
         if self._placed:
-            loads = self._problem.loads(t, np.zeros(self._problem.n))
-            return loads.into[self._order], loads.faces, loads.sources
-        values = [float(law(t=t)) for law in self._laws]
-        if self._last is None or self._last[0] != values:
-            now = np.array(values)
-            self._last = (values, (self._spread @ now, self._of_face @ now, self._of_region @ now))
-        return self._last[1]
+            cold = np.zeros(self._problem.n)
+            loads = [self._problem.loads(t, cold) for t in instants]
+            into = np.array([load.into for load in loads])[:, self._order[self.nodes]]
+            return into, np.array([load.faces for load in loads]), np.array([load.sources for load in loads])
+        values = np.array([[float(law(t=t)) for law in self._laws] for t in instants])
+        return (self._spread @ values.T).T, values @ self._of_face, values @ self._of_region
 
 
 class LinearStages:
@@ -132,6 +137,7 @@ class LinearStages:
         cold = np.zeros(problem.n)
         self._capacity = problem.capacity(cold)[self._order]
         self._drive = Drive(problem, self._order)
+        self._driven = int(np.searchsorted(self._drive.nodes, self._n))  # how many of them are free
         film = problem.film_coefficients()
         balance = problem.stiffness(0.0, cold) + sp.diags_array(film.sum(axis=0))
         self._balance = sp.csr_array(balance[self._order][:, self._order])
@@ -143,48 +149,51 @@ class LinearStages:
         self._rows = sp.csr_array(rows[:, self._near])
         self._drawing = sp.csc_array(rows[:, : self._n].T)
 
-    def solve(self, t0: float, dt: float, T: Floats, solve: Callable[[Floats], Floats]) -> Stages:
+    def solve(self, t0: float, dt: float, T: Floats, solve: Callable[[Floats], Floats], *, estimate: bool) -> Stages:
         """Return the stages of the step from t0 [s] of size dt [s] and temperatures T [K].
 
         Parameters
         ----------
         solve : callable
             From a heat of the free nodes [J] to their change [K], by the factor of C + gamma dt A.
+        estimate : bool
+            Whether to work out `owed`.
         """
         n, C, T = self._n, self._capacity, T[self._order]
         instants = self._tableau.instants(t0, dt)
-        drives = [self._drive(t) for t in instants]
-        into = [drive[0] for drive in drives]
+        into, given, sources = self._drive(instants)
         leaving = self._balance @ T
         Z = np.empty((len(instants), len(T)))
         if n < len(T):
             Z[:, n:] = [self._problem.held_values(t) - T[n:] for t in instants]
         self._march(Z, dt, into, leaving, solve)
 
-        outside = np.array([drive[1] for drive in drives]) - (Z[:, self._wet] + T[self._wet]) @ self._film.T
+        outside = given - (Z[:, self._wet] + T[self._wet]) @ self._film.T
         faces, through = outside, np.empty(0)
         if n < len(T):
-            net = np.array([given[n:] for given in into]) - leaving[n:] - (self._rows @ Z[:, self._near].T).T
+            net = -leaving[n:] - (self._rows @ Z[:, self._near].T).T
+            net[:, self._drive.nodes[self._driven :] - n] += into[:, self._driven :]
             growth = C[n:] / dt * (self._back @ Z[:, n:])
             faces, through = outside + (growth - net) @ self._problem.held_parts.T, net[-1]
-        owed = C[:n] * ((self._tableau.error @ self._back) @ Z[:, :n])
-        sources = np.array([drive[2] for drive in drives])
-        end, growth = np.empty(len(T)), np.empty(len(T))
-        end[self._order], growth[self._order] = T + Z[-1], C / dt * (self._back[-1] @ Z)
-        return Stages(instants[-1], end, growth, owed, faces, sources, outside[-1], through)
+        owed = C[:n] * ((self._tableau.error @ self._back) @ Z[:, :n]) if estimate else np.empty(0)
+        end, rate = np.empty(len(T)), np.empty(len(T))
+        end[self._order], rate[self._order] = T + Z[-1], (self._back[-1] / dt) @ Z
+        return Stages(instants[-1], end, rate, owed, faces, sources, outside[-1], through)
 
-    def _march(
-        self, Z: Floats, dt: float, into: list[Floats], leaving: Floats, solve: Callable[[Floats], Floats]
-    ) -> None:
+    def _march(self, Z: Floats, dt: float, into: Floats, leaving: Floats, solve: Callable[[Floats], Floats]) -> None:
         """Fill in the free nodes' changes, Z[:, :n]; the held nodes' are given."""
-        n, size, last = self._n, self._tableau.gamma * dt, None
+        n, size, C = self._n, self._tableau.gamma * dt, self._capacity[: self._n]
+        driven, heat = self._drive.nodes[: self._driven], size * into[:, : self._driven]
         moving = bool(Z[:, n:].any())
+        lost = size * leaving[:n]
         for i in range(len(Z)):
-            if into[i] is not last:
-                last, steady = into[i], size * (into[i] - leaving)[:n]
-            supply = (-self._tableau.gamma * self._back[i, :i]) @ Z[:i, :n]
-            supply *= self._capacity[:n]
-            supply += steady
+            if i == 0:
+                supply = -lost
+            else:
+                supply = (-self._tableau.gamma * self._back[i, :i]) @ Z[:i, :n]
+                supply *= C
+                supply -= lost
+            supply[driven] += heat[i]
             if moving:
                 supply -= size * (self._drawing @ Z[i, n:])
             Z[i, :n] = solve(supply)

@@ -16,7 +16,7 @@ from fem.stepping import INSIDE, SDIRK4, Ladder, Steps, Tableau
 Floats = NDArray[np.float64]
 
 NEWTON_ROUNDS = 12
-NEWTON_PART = 1e-6
+NEWTON_PART = 3e-6
 """Newton's remaining error as a part of the step tolerance: small enough for the heat ledger to close to 1e-6 of the heat turned over."""
 SMALLEST_PIECE = 0.1
 """A replayed step on which Newton fails is halved, down to pieces of this part of it."""
@@ -154,7 +154,9 @@ class StageSolver:
                 if size * rate / (1.0 - rate) <= self.tolerance:
                     return T, problem.heat(T), problem.loads(t, T), K
             last = size
-        if last <= STALLED * self.tolerance:  # rounding, not Newton's method, is what is left; the ledger shows what it amounts to
+        if (
+            last <= STALLED * self.tolerance
+        ):  # rounding, not Newton's method, is what is left; the ledger shows what it amounts to
             return T, problem.heat(T), problem.loads(t, T), K
         return None
 
@@ -193,7 +195,6 @@ class March:
         self._linear = LinearStages(problem, tableau) if problem.linear else None
         self.T = problem.start()
         self._base = problem.capacity(self.T).copy()
-        self._H = problem.heat(self.T)
         self._rate: Floats | None = None
         self._flow = np.zeros(len(problem.problem.faces))
         self.rejected = 0
@@ -262,11 +263,10 @@ class March:
         """
         problem = self.problem
         inside = t + INSIDE * 1e-3 * (self.end - self.begin)
-        before = self._H
+        before = problem.heat(self.T)
         if jump:
             self.T = self.T.copy()
             self.T[problem.held] = problem.held_values(inside)
-            self._H = problem.heat(self.T)
         loads = problem.loads(inside, self.T)
         through = loads.into - problem.conducted(problem.stiffness(inside, self.T), self.T)
         rate: Floats = through / problem.capacity(self.T)
@@ -277,7 +277,7 @@ class March:
             at_held = problem.split_reaction((problem.capacity(self.T) * rate - through)[problem.held])
             self._flow = self._flow + (np.where(at_held == 0.0, 0.0, np.nan) if jump else at_held)
         self._rate = None if jump else rate
-        return problem.split_reaction((self._H - before)[problem.held])
+        return problem.split_reaction((problem.heat(self.T) - before)[problem.held])
 
     def _try(self, t0: float, t1: float, *, estimate: bool) -> tuple[Step, float] | None:
         try:
@@ -295,19 +295,18 @@ class March:
     def _stages(self, t0: float, t1: float, *, estimate: bool) -> tuple[Step, float] | None:
         dt = t1 - t0
         if self._linear is not None:
-            stages = self._linear.solve(t0, dt, self.T, self._solver.filter)
+            stages = self._linear.solve(t0, dt, self.T, self._solver.filter, estimate=estimate)
         elif (solved := self._newton_stages(t0, dt)) is not None:
             stages = solved
         else:
             return None
         problem, held, T = self.problem, self.problem.held, stages.T
         error = self._error(stages) if estimate else 0.0
-        capacity, flow = problem.capacity(T), stages.outside
-        d1 = stages.growth / capacity
+        d1, flow = stages.rate, stages.outside
         if len(held):
             before = stages.t - 1e-4 * dt
             d1[held] = (T[held] - problem.held_values(before)) / (stages.t - before)
-            flow = flow + problem.split_reaction(capacity[held] * d1[held] - stages.through)
+            flow = flow + problem.split_reaction(problem.capacity(T)[held] * d1[held] - stages.through)
         weights, nothing = dt * self.tableau.A[-1], np.zeros(len(flow))
         heat, made = weights @ stages.faces, weights @ stages.sources
         return Step(t0, t1, self.T, T, self._rate, d1, heat, nothing, made, nothing, flow), error
@@ -317,9 +316,15 @@ class March:
         s, size, T = len(tableau.c), tableau.gamma * dt, self.T
         F = np.zeros((s, problem.n))
         faces, sources = np.zeros((s, len(problem.problem.faces))), np.zeros((s, len(problem.problem.source)))
-        through = np.empty(0)
+        before, through = problem.heat(T), np.empty(0)
+        H = before
         for i, t in enumerate(tableau.instants(t0, dt)):
-            rhs = self._H + dt * (tableau.A[i, :i] @ F[:i])
+            rhs = before + dt * (tableau.A[i, :i] @ F[:i])
+            # First guess: the rates of the stage before go on. It saves a fifth of Newton's rounds over starting from that stage.
+            if i > 0:
+                T = T + (rhs + size * F[i - 1] - H) / problem.capacity(T)
+            elif self._rate is not None:
+                T = T + size * self._rate
             solved = self._solver.stage(t, size, rhs, T)
             if solved is None:
                 return None
@@ -330,7 +335,7 @@ class March:
                 through = (loads.into - problem.conducted(K, T))[held]
                 faces[i] += problem.split_reaction(F[i, held] - through)
         owed = dt * (tableau.error @ F)[problem.free]
-        return Stages(t, T, F[-1], owed, faces, sources, loads.faces, through)
+        return Stages(t, T, F[-1] / problem.capacity(T), owed, faces, sources, loads.faces, through)
 
     def _error(self, stages: Stages) -> float:
         """Return the local error, K: the embedded difference, damped by the step matrix as Hairer and Wanner (II, IV.8) advise."""
@@ -341,7 +346,6 @@ class March:
 
     def _advance(self, step: Step, impulse: Floats) -> Step:
         self.T, self._rate = step.T1, step.d1
-        self._H = self.problem.heat(step.T1)
         taken = replace(step, impulse=impulse, flow0=self._flow)
         self._flow = step.flow
         return taken

@@ -11,7 +11,7 @@ from fem.docket import Docket
 from fem.docket_file import to_text
 from fem.docket_hash import content_hash, is_shelvable
 from fem.doubt import map_doubt
-from fem.judge import Judgement, too_wide
+from fem.judge import WANTED, Judgement, too_wide
 from fem.march import Outcome
 from fem.problem import Problem
 from fem.record import Fields, Reason, Record, RecordMesh, TurnNote
@@ -43,7 +43,7 @@ def reasons_of(judgement: Judgement, outcome: str, kind: str, *, banded: bool) -
                 )
             )
     for need in judgement.needs:
-        if need.total > 1.0 and need.goal.why == "wanted band":
+        if need.total > 1.0 and need.goal.why == WANTED:
             text = f"{too_wide(need.goal.key)}: its band is {need.total:.2g} times the wanted one"
             reasons.append(Reason(text, "a larger allowance (cells, seconds), or a wider wanted band"))
     reasons += [Reason(f.message, f.close) for f in judgement.findings if f.blocks]

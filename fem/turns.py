@@ -109,7 +109,7 @@ class Turner:
         if not self.fits(cells, seconds):
             return None
         return Turn(
-            "", f"split every cell ({cells} on the finest mesh), since {worst.goal.why} asks for it", "everywhere"
+            "", f"split every cell ({cells} on the finest mesh), since {worst.goal.why}", "everywhere"
         )
 
     def _cells(self, study: Study, judgement: Judgement, bench: Bench) -> Turn | None:

@@ -10,8 +10,11 @@ from fem.docket_file import read_text
 from fem.history import Key
 from fem.laws import as_law
 from fem.log_folder import LogFolder
+from fem.march import Outcome
 from fem.problem import Film
+from fem.run import run
 from fem.vouch import vouch
+from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on
 from tests.support.jobs import FEW, Job, bar, jobs, posed, solved, with_points
 
@@ -78,19 +81,28 @@ def test_the_heat_ledger_closes(job):
 
 
 @FEW
-@given(job=jobs(), sign=st.sampled_from([1.0, -1.0]))
-def test_temperatures_stay_between_what_drives_them(job, sign):
-    """Maximum principle: without heat made or flux, between the start and all that is held or faced; a flux lifts one side only."""
+@given(job=jobs(), tolerance=st.sampled_from([0.1, 30.0]))
+def test_temperatures_stay_between_what_drives_them(job, tolerance):
+    """Maximum principle: without heat made or flux, between the start and all that is held or faced, however coarse the steps."""
     job = replace(job, source=0.0, flux=0.0)
     mesh = bar()
-    result = solved(mesh, posed(job, mesh.plan), count=5)  # long steps: damping, not resolution, must do it
+    result = run(mesh, posed(job, mesh.plan), gauges_at(), tolerance=tolerance, first=0.1)
+    assert result.outcome is Outcome.finished
     drives = [job.start, job.held, job.held + 4.0, 0.9 * job.ambient, 1.1 * job.ambient]
-    assert min(drives) - 1e-6 <= result.low.min()
-    assert result.peak.max() <= max(drives) + 1e-6
-    pushed = solved(mesh, posed(replace(job, flux=sign * 100.0), mesh.plan), count=5)
-    gain = sign * (pushed.frames - result.frames)
-    assert gain.min() >= -1e-3  # what Newton may leave; heat in never cools
-    assert gain.max() > 0.0
+    slack = 1e-4 * tolerance  # Newton's remainder is 1e-6 of the tolerance per stage
+    assert min(drives) - slack <= result.low.min()
+    assert result.peak.max() <= max(drives) + slack
+
+
+@FEW
+@given(job=jobs(curved=False), sign=st.sampled_from([1.0, -1.0]))
+def test_heat_in_never_cools_and_heat_out_never_warms(job, sign):
+    """Comparison principle; long steps, so that damping and not resolution must do it."""
+    mesh = bar()
+    base, pushed = (solved(mesh, posed(replace(job, flux=flux), mesh.plan), count=5) for flux in (0.0, sign * 100.0))
+    gain = sign * (pushed.frames - base.frames)
+    assert gain.min() >= -ROUNDING * 2000.0
+    assert gain.max() > 1.0
 
 
 @FEW
@@ -133,7 +145,7 @@ everywhere = {T0}
 name = "in"
 at = [{gx}, {gy}]
 [wanted]
-gauges = "2 K"
+gauges = "5 K"
 """
 
 
@@ -152,12 +164,12 @@ def written(length, time, temperature):
 def test_the_units_of_a_docket_move_no_number():
     base = vouch(written("m", "s", "K"))
     key = Key("gauge", "in")
-    for words in (("mm", "min", "degC"), ("in", "h", "degF"), ("cm", "s", "degF")):
+    for words in (("mm", "min", "degC"), ("in", "h", "degF")):
         record = vouch(written(*words))
         for t in base.figures.grid.t[base.figures.grid.reported]:
             (v, b), (w, c) = base.figures.at(key, t), record.figures.at(key, t)
             assert abs(v - w) <= b + c  # rounding of lengths may move the mesh generator's nodes, so not closer
-            assert max(b, c) <= 2.0
+            assert max(b, c) <= 5.0
 
 
 def test_jobs_are_drawn_with_every_kind_of_drive():

@@ -63,14 +63,15 @@ def test_a_dummy_interface_changes_nothing(job):
     x, y = np.unique(two.points[:, 0]), np.unique(two.points[:, 1])
     one = grid_mesh(box_plan((0.0, 1.0), 0.3), x, y, alternate=True)
     problem = posed(job, two.plan)
-    right, top, left, *rest = problem.faces
-    rest = [replace(f, curves=curves_of(one.plan, "part 0.bottom")) for f in rest]
-    bottom_half = job.curved  # the one region's bottom is longer than the half that radiates: leave radiation out there
-    faces = [replace(f, curves=curves_of(one.plan, f"part 0.{name}")) for f, name in ((right, "right"), (left, "left"))]
-    single = replace(problem, conductivity=problem.conductivity[:1], heat_capacity=problem.heat_capacity[:1], source=(None,),
-                     start=problem.start[:1], faces=tuple(faces))  # fmt: skip
-    double = replace(problem, faces=(right, left))
-    del top, rest, bottom_half
+    double = replace(problem, faces=tuple(f for f in problem.faces if f.edge in ("part 1.right", "part 0.left")))
+    single = replace(
+        double,
+        conductivity=problem.conductivity[:1],
+        heat_capacity=problem.heat_capacity[:1],
+        source=(None,),
+        start=problem.start[:1],
+        faces=tuple(replace(f, curves=curves_of(one.plan, f.edge.replace("part 1", "part 0"))) for f in double.faces),
+    )
     here, there = solved(one, single), solved(two, double)
     order = [np.lexsort(m.points.T) for m in (one, two)]
     np.testing.assert_allclose(there.frames[:, order[1]], here.frames[:, order[0]], rtol=ROUNDING)
