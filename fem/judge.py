@@ -103,7 +103,9 @@ def judge(
     table = figures(study, problem, derived(docket))
     goals = wanted_goals(docket, table)
     table = no_narrower(table, goals)
-    verdicts = tuple(judge_limit(docket, limit, table) for limit in docket.limits)
+    # What broke off says nothing of the rest of the clock: no band, so no limit is called.
+    seen = table if study.finished else replace(table, space=np.full_like(table.space, np.inf))
+    verdicts = tuple(judge_limit(docket, limit, seen) for limit in docket.limits)
     floor = NARROWEST * float(docket.wanted.gauges)
     asked = [closing_goal(docket, limit, v, floor) for limit, v in zip(docket.limits, verdicts, strict=True)]
     goals += [goal for goal in asked if goal is not None]

@@ -85,6 +85,8 @@ def _view(figures: Figures, key: Key, limit: Limit) -> _View:
 def judge_limit(docket: Docket, limit: Limit, figures: Figures) -> Verdict:
     """Return the verdict on one limit."""
     view = _view(figures, subject(docket, limit), limit)
+    if not len(view.t):  # the work ended before the limit came into force
+        return _verdict(docket, limit, np.nan, np.inf, float(figures.grid.t[-1]), None)
     if limit.must == "reach":
         return _reach(docket, limit, view, figures.grid.t[0])
     if limit.must == "hold above":

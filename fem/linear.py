@@ -133,6 +133,7 @@ class LinearStages:
         self._problem, self._tableau = problem, tableau
         self._back = np.linalg.inv(tableau.A)  # from changes to rates, over C / dt
         self._order = np.concatenate((problem.free, problem.held))
+        self._place = np.argsort(self._order)
         self._n = len(problem.free)
         cold = np.zeros(problem.n)
         self._capacity = problem.capacity(cold)[self._order]
@@ -159,7 +160,7 @@ class LinearStages:
         estimate : bool
             Whether to work out `owed`.
         """
-        n, C, T = self._n, self._capacity, T[self._order]
+        n, C, T = self._n, self._capacity, T.take(self._order)
         instants = self._tableau.instants(t0, dt)
         into, given, sources = self._drive(instants)
         leaving = self._balance @ T
@@ -176,8 +177,7 @@ class LinearStages:
             growth = C[n:] / dt * (self._back @ Z[:, n:])
             faces, through = outside + (growth - net) @ self._problem.held_parts.T, net[-1]
         owed = C[:n] * ((self._tableau.error @ self._back) @ Z[:, :n]) if estimate else np.empty(0)
-        end, rate = np.empty(len(T)), np.empty(len(T))
-        end[self._order], rate[self._order] = T + Z[-1], (self._back[-1] / dt) @ Z
+        end, rate = (T + Z[-1]).take(self._place), ((self._back[-1] / dt) @ Z).take(self._place)
         return Stages(instants[-1], end, rate, owed, faces, sources, outside[-1], through)
 
     def _march(self, Z: Floats, dt: float, into: Floats, leaving: Floats, solve: Callable[[Floats], Floats]) -> None:

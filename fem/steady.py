@@ -18,6 +18,8 @@ Floats = NDArray[np.float64]
 
 ROUNDS = 80
 SHORTEST = 1.0 / 64.0
+STILL = 1e-8
+"""Part of the flows between nodes, taken from 0 K, below which nothing is said to flow: a ledger closes to 1e-6 of that."""
 
 
 def solve_steady(mesh: Mesh, problem: Problem, gauges: Gauges, *, tolerance: float) -> Run:
@@ -38,10 +40,11 @@ def solve_steady(mesh: Mesh, problem: Problem, gauges: Gauges, *, tolerance: flo
         (conduction.conducted(conduction.stiffness(0.0, T), T) - loads.into)[conduction.held]
     )
     still = np.zeros(conduction.n)
+    nothing = STILL * float((abs(conduction.stiffness(0.0, T)) @ np.abs(T)).sum())  # what rounding moves
     recorder.add(Step(0.0, 1.0, T, T, still, still, flow, 0.0 * flow, loads.sources, flow, flow))
     return Run(
         mesh, outcome, _flows_only(recorder.history()), Steps(np.array([0.0, 1.0])), np.array([1.0]), T[None, :], T, T, np.ones_like(T),
-        recorder.heat, recorder.made, 0.0, 0.0, T, time.perf_counter() - began, count, recorder.where_of(),
+        recorder.heat, recorder.made, 0.0, nothing, T, time.perf_counter() - began, count, recorder.where_of(),
     )  # fmt: skip
 
 

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from fem.checks.facts import Facts
+from fem.checks.facts import Facts, RegionStock
 from fem.findings import Finding
 
 ROUNDING = 1e-6
@@ -14,6 +14,9 @@ def check(facts: Facts) -> list[Finding]:
     found = []
     for index, stock in enumerate(facts.stocks):
         nodes = np.unique(run.mesh.cells[run.mesh.region == index])
+        if stock.high == np.inf:
+            found.append(_without_range(stock))
+            continue
         hot, cold = nodes[np.argmax(run.peak[nodes])], nodes[np.argmin(run.low[nodes])]
         for node, T, excess, end in (
             (hot, run.peak[hot], run.peak[hot] - stock.high, stock.high),
@@ -34,3 +37,10 @@ def check(facts: Facts) -> list[Finding]:
                     )
                 )
     return found
+
+
+def _without_range(stock: RegionStock) -> Finding:
+    return Finding(
+        "stock range",
+        f'"{stock.stock}" in region "{stock.region}" does not say in which range its values hold: nothing was checked against it',
+    )

@@ -69,13 +69,13 @@ class TheirMarch:
         k = [T.CreateVector() for _ in c]
         stage, rhs = T.CreateVector(), T.CreateVector()
         for n in range(steps):
-            for i, part in enumerate(c):
+            for i, part in enumerate(c.tolist()):
                 stage.data = T
                 for j in range(i):
-                    stage.data += (dt * A[i, j]) * k[j]
+                    stage.data += (dt * float(A[i, j])) * k[j]
                 rhs.data = ambient((n + part) * dt) * self.g - self.A * stage
                 k[i].data = inverse * rhs
-            for j, weight in enumerate(A[-1]):
+            for j, weight in enumerate(A[-1].tolist()):
                 T.data += (dt * weight) * k[j]
         return T.FV().NumPy().copy()
 
