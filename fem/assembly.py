@@ -62,14 +62,16 @@ class Assembly:
         unit = np.einsum("mid,mjd->mij", opposite, opposite) / (4.0 * area)[:, None, None]
         if self.revolution:
             unit *= (2.0 * np.pi * p[:, :, 0].mean(axis=1))[:, None, None]
-        rows = np.repeat(self.mesh.cells, 3, axis=1).ravel().astype(np.int64)
-        columns = np.tile(self.mesh.cells, (1, 3)).ravel().astype(np.int64)
-        keys, place = np.unique(rows * self.n + columns, return_inverse=True)
-        self.indices = keys % self.n
-        self.indptr = np.searchsorted(keys, np.arange(self.n + 1) * self.n)
+        rows = np.repeat(self.mesh.cells, 3, axis=1).ravel()
+        columns = np.tile(self.mesh.cells, (1, 3)).ravel()
+        pattern = sp.csr_array((np.ones(len(rows)), (rows, columns)), shape=(self.n, self.n))
+        pattern.sort_indices()
+        self.indices, self.indptr = pattern.indices, pattern.indptr
+        pattern.data = np.arange(pattern.nnz, dtype=np.float64)  # each entry's own place, exact in float64
+        place = pattern[rows, columns].astype(np.intp)
         cell = np.repeat(np.arange(len(self.mesh.cells)), 9)
         # data of the global matrix = spread @ conductivity of the cells: 35 to 76 times faster than assembling anew
-        self.spread = sp.csr_array((unit.ravel(), (place, cell)), shape=(len(keys), len(self.mesh.cells)))
+        self.spread = sp.csr_array((unit.ravel(), (place, cell)), shape=(pattern.nnz, len(self.mesh.cells)))
 
     def stiffness(self, conductivity: Floats) -> sp.csr_array:
         """Return the conduction matrix, W/K (per metre of depth when planar).

@@ -195,7 +195,7 @@ def _floating(docket: Docket, plan: Plan, faces: list[Face]) -> list[Problem]:
     """Refuse a steady job in which nothing fixes the temperature of some part."""
     if docket.clock is not None:
         return []
-    anchored = {i for face in faces if face.held is not None or face.films or face.radiants for i in face.curves}
+    anchored = {i for face in faces if _fixes(face) for i in face.curves}
     group = list(range(len(plan.region_names)))  # regions joined through their interfaces
     for curve in plan.curves:
         if curve.left >= 0 and curve.right >= 0:
@@ -212,6 +212,12 @@ def _floating(docket: Docket, plan: Plan, faces: list[Face]) -> list[Problem]:
         for name, g in zip(plan.region_names, group, strict=True)
         if g not in fixed
     ]
+
+
+def _fixes(face: Face) -> bool:
+    """Return whether a face pulls the temperature to a level: held, or by a film or surroundings that are not nought for good."""
+    laws = [film.coefficient for film in face.films] + [radiant.emissivity for radiant in face.radiants]
+    return face.held is not None or any(not law.constant or float(law()) > 0.0 for law in laws)
 
 
 # --- gauges -------------------------------------------------------------------------------------------------------------------------

@@ -22,8 +22,8 @@ FRAMES = 120
 """Fields kept per run: enough to draw the run again; between them histories are exact, pictures are not."""
 
 STILL = 1e-6
-"""Part of the heat content above 0 K below which nothing is said to move: a ledger that closes to 1e-6 of it closes to 1e-12 of the content,
-some thousand times the rounding of a sum."""
+"""Part of the heat content above 0 K below which nothing is said to move: a ledger that closes to 1e-6 of it closes to 1e-12 of
+the content, some thousand times the rounding of a sum."""
 
 Watcher = Callable[[float], bool]
 """Told the simulated time reached, s, after each step; False stops the run."""

@@ -54,7 +54,9 @@ def rows() -> list[Row]:
             lambda c=conduction, s=solver, d=dt: _substitutions(s, c, d, 5 * STEPS),
             ROUNDS,
         )
-        note = f"{1e3 * ours / STEPS:.2f} ms a step; 1 factorization + {5 * STEPS} substitutions {1e3 * least / STEPS:.2f}"
+        note = (
+            f"{1e3 * ours / STEPS:.2f} ms a step; 1 factorization + {5 * STEPS} substitutions {1e3 * least / STEPS:.2f}"
+        )
         found.append(Row("linear step / least", f"{conduction.n} unknowns, replayed", value, 1.5, note))
         found.append(_chosen_row(conduction, solver))
     return found

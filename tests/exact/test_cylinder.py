@@ -15,7 +15,11 @@ R, END = 0.03, 400.0
 def test_a_cylinder_drawn_as_a_body_of_revolution():
     places = {"axis": (0.0, 0.005), "half way": (0.015, 0.005)}
     docket = docket_of(
-        [region("rod", box(0, 0, R, 0.01))], {"bath": {"on": ("rod.right",), "held": 373.15}}, kind="revolution", end=END, gauges=places
+        [region("rod", box(0, 0, R, 0.01))],
+        {"bath": {"on": ("rod.right",), "held": 373.15}},
+        kind="revolution",
+        end=END,
+        gauges=places,
     )
     record = vouch(docket)
     for name, (r, _) in places.items():
@@ -28,7 +32,9 @@ def test_a_cylinder_drawn_as_a_body_of_revolution():
 def test_a_cylinder_drawn_as_a_planar_disc():
     disc = [{"x": R, "y": 0.0, "edge": "skin", "via": (0.0, R)}, {"x": -R, "y": 0.0, "edge": "skin", "via": (0.0, -R)}]
     places = {"centre": (0.0, 0.0), "half way": (0.0, -0.015)}
-    record = vouch(docket_of([region("disc", disc)], {"bath": {"on": ("disc.skin",), "held": 373.15}}, end=END, gauges=places))
+    record = vouch(
+        docket_of([region("disc", disc)], {"bath": {"on": ("disc.skin",), "held": 373.15}}, end=END, gauges=places)
+    )
     for name, (x, y) in places.items():
         r = np.hypot(x, y)
         assert_holds(record, name, lambda t, r=r: cylinder_held(r, t, radius=R, alpha=ALPHA, start=293.15, held=373.15))
@@ -36,9 +42,21 @@ def test_a_cylinder_drawn_as_a_planar_disc():
 
 def test_a_sphere():
     s = R / np.sqrt(2.0)
-    ball = [{"x": 0.0, "y": -R, "edge": "skin", "via": (s, -s)}, {"x": R, "y": 0.0, "edge": "skin", "via": (s, s)}, {"x": 0.0, "y": R}]
+    ball = [
+        {"x": 0.0, "y": -R, "edge": "skin", "via": (s, -s)},
+        {"x": R, "y": 0.0, "edge": "skin", "via": (s, s)},
+        {"x": 0.0, "y": R},
+    ]
     places = {"centre": (0.0, 0.0), "off the axis": (0.012, 0.009)}
-    record = vouch(docket_of([region("ball", ball)], {"bath": {"on": ("ball.skin",), "held": 373.15}}, kind="revolution", end=END, gauges=places))
+    record = vouch(
+        docket_of(
+            [region("ball", ball)],
+            {"bath": {"on": ("ball.skin",), "held": 373.15}},
+            kind="revolution",
+            end=END,
+            gauges=places,
+        )
+    )
     for name, (x, y) in places.items():
         r = np.hypot(x, y)
         assert_holds(record, name, lambda t, r=r: sphere_held(r, t, radius=R, alpha=ALPHA, start=293.15, held=373.15))
@@ -61,7 +79,9 @@ def test_steady_heat_through_a_pipe():
 def test_the_turn_of_a_cone_has_its_volume():
     # Stored heat of a body that warms uniformly by a source: g t V, V = pi R^2 H / 3 of a cone (Euclid, book XII).
     cone = [{"x": 0.0, "y": 0.0}, {"x": 0.03, "y": 0.0}, {"x": 0.0, "y": 0.04}]
-    record = vouch(docket_of([region("cone", cone, source=1e5)], {}, kind="revolution", end=100.0, gauges={"in": (0.005, 0.01)}))
+    record = vouch(
+        docket_of([region("cone", cone, source=1e5)], {}, kind="revolution", end=100.0, gauges={"in": (0.005, 0.01)})
+    )
     stored, _ = record.figures.at(Key("stored", ""), 100.0)
     assert stored == pytest.approx(1e5 * 100.0 * np.pi * 0.03**2 * 0.04 / 3, rel=1e-6)  # what the ledger may leave
     value, _ = record.figures.at(Key("gauge", "in"), 100.0)

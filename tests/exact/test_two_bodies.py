@@ -20,7 +20,9 @@ def test_two_bodies_that_touch():
     places = {"joint": (0.0, 0.005), "in brick": (-0.004, 0.005), "in steel": (0.01, 0.005)}
     record = vouch(docket_of(parts, {}, stock=TWO, end=30.0, report=3.0, gauges=places))
     for name, (x, _) in places.items():
-        assert_holds(record, name, lambda t, x=x: two_bodies(x, t, k=(1.0, 40.0), rho_c=(1.8e6, 3.9e6), start=(293.15, 573.15)))
+        assert_holds(
+            record, name, lambda t, x=x: two_bodies(x, t, k=(1.0, 40.0), rho_c=(1.8e6, 3.9e6), start=(293.15, 573.15))
+        )
 
 
 def test_heat_is_kept_when_bodies_of_different_temperature_settle():
@@ -45,7 +47,9 @@ def test_steady_layers_in_series():
     record = vouch(docket_of(parts, faces, stock=TWO, gauges={"joint": (0.1, 0.025), "out": (0.12, 0.01)}))
     q = 900.0 / (1 / 50.0 + 0.1 / 1.0 + 0.02 / 40.0 + 1 / 10.0)
     flow, _ = record.figures.at(Key("flow", "kiln"), 1.0)
-    assert flow == pytest.approx(q * 0.05, rel=1e-6)  # linear elements are exact on straight lines: the solver's remainder is left
+    assert flow == pytest.approx(
+        q * 0.05, rel=1e-6
+    )  # linear elements are exact on straight lines: the solver's remainder is left
     for name, exact in {"joint": 1200.0 - q * (1 / 50.0 + 0.1), "out": 300.0 + q / 10.0}.items():
         value, band = record.figures.at(Key("gauge", name), 1.0)
         assert abs(value - exact) <= band <= 1.0
@@ -56,7 +60,11 @@ def test_a_body_alike_all_through(shape):
     # Bi < 1e-4, so within 1e-4 of the drive: exponential decay to the ambient (Incropera and DeWitt, sec. 5.1), or, radiating to
     # surroundings at 0 K, T^-3 - T0^-3 = 3 eps sigma A t / (rho c V) (sec. 5.3).
     stock = {"copper": {"conductivity": 400.0, "density": 8900.0, "specific_heat": 385.0}}
-    given = {"film": {"coefficient": 8.0, "ambient": 293.15}} if shape == "film" else {"radiant": {"emissivity": 0.7, "surroundings": 0.0}}
+    given = (
+        {"film": {"coefficient": 8.0, "ambient": 293.15}}
+        if shape == "film"
+        else {"radiant": {"emissivity": 0.7, "surroundings": 0.0}}
+    )
     side, end = 0.01, 1000.0
     docket = docket_of(
         [region("bar", box(0, 0, side, side), "copper")], {"air": {"on": ("bar.*",), **given}}, stock=stock, end=end, start=900.0,

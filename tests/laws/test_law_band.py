@@ -25,7 +25,9 @@ def covered(facts, places, exact):
 
 def study(cells, edge, end, places, start=300.0, tolerance=0.05):
     mesh = strip(cells=cells)
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", **edge)], start=start, end=end, report_every=end / 10)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", **edge)], start=start, end=end, report_every=end / 10
+    )
     height = np.ptp(mesh.points[:, 1])
     return facts_of(mesh, problem, gauges_at(*((x, 0.5 * height) for x in places)), tolerance=tolerance)
 
@@ -48,7 +50,9 @@ def test_held_slabs(cells, end, places, held):
 @given(cells=CELLS, end=ENDS, places=PLACES, h=st.floats(0.1, 50.0), ambient=st.floats(320.0, 1500.0))
 def test_slabs_with_a_film(cells, end, places, h, ambient):
     facts = study(cells, {"film": (h, ambient)}, end, places)
-    inside, _ = covered(facts, places, lambda x, t: slab_film(x, t, half=1.0, k=1.0, alpha=1.0, h=h, start=300.0, ambient=ambient))
+    inside, _ = covered(
+        facts, places, lambda x, t: slab_film(x, t, half=1.0, k=1.0, alpha=1.0, h=h, start=300.0, ambient=ambient)
+    )
     assert all(inside)
 
 
@@ -56,12 +60,16 @@ def test_slabs_with_a_film(cells, end, places, h, ambient):
 @given(cells=CELLS, end=ENDS, places=PLACES, flux=st.floats(10.0, 2000.0))
 def test_slabs_with_a_flux(cells, end, places, flux):
     facts = study(cells, {"flux": flux}, end, places)
-    inside, _ = covered(facts, places, lambda x, t: slab_flux(x, t, thick=1.0, k=1.0, alpha=1.0, flux=flux, start=300.0))
+    inside, _ = covered(
+        facts, places, lambda x, t: slab_flux(x, t, thick=1.0, k=1.0, alpha=1.0, flux=flux, start=300.0)
+    )
     assert all(inside)
 
 
 def test_a_wrong_conductivity_falls_outside_the_band():
     """Teeth: 2 % off in the exact answer's conductivity is more than the band of a fine mesh."""
     facts = study(12, {"film": (5.0, 900.0)}, 0.3, (0.2, 0.8), tolerance=0.01)
-    inside, _ = covered(facts, (0.2, 0.8), lambda x, t: slab_film(x, t, half=1.0, k=1.02, alpha=1.02, h=5.0, start=300.0, ambient=900.0))
+    inside, _ = covered(
+        facts, (0.2, 0.8), lambda x, t: slab_film(x, t, half=1.0, k=1.02, alpha=1.02, h=5.0, start=300.0, ambient=900.0)
+    )
     assert not all(inside)

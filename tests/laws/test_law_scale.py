@@ -63,7 +63,9 @@ def test_solutions_of_a_linear_problem_add_up(one, two, a):
             face(mesh.plan, "part 1.top", flux=flux),
             face(mesh.plan, "part 0.left", held=held),
         ]
-        problem = problem_on(mesh.plan, faces, k=(1.0, 3.0), rho_c=(2.0, 1.0), source=(None, source), start=start, end=0.4)
+        problem = problem_on(
+            mesh.plan, faces, k=(1.0, 3.0), rho_c=(2.0, 1.0), source=(None, source), start=start, end=0.4
+        )
         return solved(mesh, problem).frames
 
     u, v = ((j.start, j.ambient, j.held, j.flux, j.source) for j in (one, two))
@@ -176,6 +178,14 @@ def test_jobs_are_drawn_with_every_kind_of_drive():
     """Teeth of the strategies: each drive of the standard job moves some temperature by more than rounding."""
     mesh = bar()
     base = solved(mesh, posed(Job(), mesh.plan)).frames
-    for name, value in {"h": 4.0, "ambient": 500.0, "flux": 40.0, "held": 360.0, "source": 20.0, "start": 310.0, "curved": True}.items():
+    for name, value in {
+        "h": 4.0,
+        "ambient": 500.0,
+        "flux": 40.0,
+        "held": 360.0,
+        "source": 20.0,
+        "start": 310.0,
+        "curved": True,
+    }.items():
         changed = solved(mesh, posed(replace(Job(), **{name: value}), mesh.plan)).frames
         assert np.abs(changed - base).max() > 1e-3, name

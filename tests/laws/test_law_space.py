@@ -92,7 +92,10 @@ def turned_docket(angle, mirror=False, split=False, length=0.05):
         middle = 0.4 * length
         parts = [region("foot", shape(box(0, 0, middle, 0.02))), region("tip", shape(box(middle, 0, length, 0.02)))]
     on = ("tip.right",) if split else ("foot.right",)
-    faces = {"hot": {"on": on, "film": {"coefficient": 50.0, "ambient": 700.0}}, "cold": {"on": ("foot.left",), "held": 293.15}}
+    faces = {
+        "hot": {"on": on, "film": {"coefficient": 50.0, "ambient": 700.0}},
+        "cold": {"on": ("foot.left",), "held": 293.15},
+    }
     gauge = dict(zip(("a", "b"), (place(0.03, 0.011), place(0.045, 0.004)), strict=True))
     return docket_of(parts, faces, stock={"stuff": BRICK}, end=900.0, gauges=gauge)
 

@@ -43,7 +43,12 @@ def test_a_steady_joint_with_sources_converges_at_order_two_on_a_generated_mesh(
     for level in range(4):
         mesh = uniform(mesh)[0] if level else mesh
         faces = [face(mesh.plan, "part 0.left", held=0.0), face(mesh.plan, "part 1.right", held=0.0)]
-        T = solve_steady(mesh, problem_on(mesh.plan, faces, k=K, source=(g, None), begin=None, end=None), gauges_at(), tolerance=1e-10)
+        T = solve_steady(
+            mesh,
+            problem_on(mesh.plan, faces, k=K, source=(g, None), begin=None, end=None),
+            gauges_at(),
+            tolerance=1e-10,
+        )
         weight = np.bincount(mesh.cells.ravel(), weights=np.repeat(mesh.areas / 3.0, 3))
         errors.append(np.sqrt(weight @ (T.frames[-1] - exact(mesh.points[:, 0])) ** 2 / weight.sum()))
     assert_order(errors, 2.0, cap=mesh.h.max() ** 2 / 8 * g / K[0])  # linear interpolation of the parabola

@@ -32,11 +32,16 @@ def test_a_decaying_mode_of_a_cylinder_converges_at_order_two():
         mesh = square(cells, kind="revolution")
         r, z = mesh.points.T
         problem = problem_on(
-            mesh.plan, [face(mesh.plan, "part 0.right", held=0.0)], start=lambda x, y: j0(j * x) * np.cos(np.pi * y), end=t
+            mesh.plan,
+            [face(mesh.plan, "part 0.right", held=0.0)],
+            start=lambda x, y: j0(j * x) * np.cos(np.pi * y),
+            end=t,
         )
         last = run(mesh, problem, NONE, tolerance=1e-4, steps=Steps(np.linspace(0, t, 17))).frames[-1]
         errors.append(ring_mean(mesh, last - np.exp(-rate * t) * j0(j * r) * np.cos(np.pi * z)))
-    assert_order(errors, 2.0, cap=np.exp(-rate * t) * rate * t * (np.pi / 64) ** 2 / 12)  # of the decay number, as on a square
+    assert_order(
+        errors, 2.0, cap=np.exp(-rate * t) * rate * t * (np.pi / 64) ** 2 / 12
+    )  # of the decay number, as on a square
 
 
 def test_heat_out_of_a_cylinder_converges_at_order_two():
@@ -44,10 +49,14 @@ def test_heat_out_of_a_cylinder_converges_at_order_two():
     j, t, errors = jn_zeros(0, 1)[0], 0.1, []
     for cells in (8, 16, 32, 64):
         mesh = square(cells, kind="revolution")
-        problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", held=0.0)], start=lambda x, y: j0(j * x), end=t)
+        problem = problem_on(
+            mesh.plan, [face(mesh.plan, "part 0.right", held=0.0)], start=lambda x, y: j0(j * x), end=t
+        )
         result = run(mesh, problem, NONE, tolerance=1e-4, steps=Steps(np.linspace(0, t, 17)))
         errors.append(abs(result.face_heat[0] + 2 * np.pi * j1(j) / j * (1 - np.exp(-(j**2) * t))))
-    assert_order(errors, 2.0, cap=2 * np.pi * j1(j) / j * (j / 64) ** 2)  # the mode's own (j h)^2, with a constant of one
+    assert_order(
+        errors, 2.0, cap=2 * np.pi * j1(j) / j * (j / 64) ** 2
+    )  # the mode's own (j h)^2, with a constant of one
 
 
 def test_a_decaying_mode_of_a_sphere_converges_at_order_two():

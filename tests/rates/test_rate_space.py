@@ -1,7 +1,8 @@
 """Orders in space. Linear triangles, lumped: 2 at nodes where the solution is smooth.
 
-Thomee, Galerkin Finite Element Methods for Parabolic Problems, 2nd ed. 2006, ch. 15 (lumped masses) and ch. 6 (maximum norm: h^2 log(1/h) on
-irregular meshes, so those are held to order 2 in the mean square). The caps come from the leading error terms named at each test. Time errors are kept far below by many steps of a fourth-order method.
+Thomee, Galerkin Finite Element Methods for Parabolic Problems, 2nd ed. 2006, ch. 15 (lumped masses) and ch. 6 (maximum norm:
+h^2 log(1/h) on irregular meshes, so those are held to order 2 in the mean square). The caps come from the leading error terms
+named at each test. Time errors are kept far below by many steps of a fourth-order method.
 """
 
 import numpy as np
@@ -59,10 +60,13 @@ def test_a_decaying_mode_of_the_square_converges_at_order_two(alternate):
     for cells in (8, 16, 32, 64):
         mesh = square(cells, alternate=alternate)
         x, y = mesh.points.T
-        problem = problem_on(mesh.plan, [face(mesh.plan, ALL, held=0.0)], start=lambda x, y: np.sin(np.pi * x) * np.sin(np.pi * y), end=t)
+        problem = problem_on(
+            mesh.plan, [face(mesh.plan, ALL, held=0.0)], start=lambda x, y: np.sin(np.pi * x) * np.sin(np.pi * y), end=t
+        )
         exact = np.exp(-rate * t) * np.sin(np.pi * x) * np.sin(np.pi * y)
         errors.append(np.abs(last_field(mesh, problem) - exact).max())
-    # Five-point formula: the rate is too small by its part (pi h)^2 / 12 (Thomee, ch. 1); alternate cuts, whose volumes alternate, at most double it.
+    # Five-point formula: the rate is too small by its part (pi h)^2 / 12 (Thomee, ch. 1). Where the cuts and with them the
+    # nodes' volumes alternate, at most twice that.
     theory = np.exp(-rate * t) * rate * t * (np.pi / 64) ** 2 / 12
     assert_order(errors, 2.0, cap=theory * (2.2 if alternate else 1.1))
 
@@ -72,11 +76,15 @@ def test_a_film_mode_on_a_generated_mesh_converges_at_order_two():
     beta = film_roots(biot, 1)[0]
     for mesh in levels(make_mesh(box_plan((0.0, 1.0), 0.6))):
         x = mesh.points[:, 0]
-        problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(biot, 0.0))], start=lambda x, y: np.cos(beta * x), end=t)
+        problem = problem_on(
+            mesh.plan, [face(mesh.plan, "part 0.right", film=(biot, 0.0))], start=lambda x, y: np.cos(beta * x), end=t
+        )
         exact = np.exp(-(beta**2) * t) * np.cos(beta * x)
         errors.append(rms(mesh, last_field(mesh, problem) - exact))
     h = mesh.h.max()
-    assert_order(errors, 2.0, cap=beta**2 * h**2 / 8)  # the error of linear interpolation of the mode (Ciarlet, 1978, sec. 3.1)
+    assert_order(
+        errors, 2.0, cap=beta**2 * h**2 / 8
+    )  # the error of linear interpolation of the mode (Ciarlet, 1978, sec. 3.1)
 
 
 def test_manufactured_k_and_c_over_temperature_converge_at_order_two():
@@ -162,7 +170,9 @@ def test_a_reentrant_corner_converges_at_its_own_order():
         x, y = mesh.points.T
         away = np.hypot(x, y) > 0.4
         errors.append(np.abs(T - exact(x, y))[away].max())
-    assert_order(errors, 4 / 3, cap=(2 / 64) ** (4 / 3))  # h^(4/3) with a constant of one, the size of the singular term
+    assert_order(
+        errors, 4 / 3, cap=(2 / 64) ** (4 / 3)
+    )  # h^(4/3) with a constant of one, the size of the singular term
 
 
 def test_a_smooth_square_of_the_same_size_does_better_than_the_corner():

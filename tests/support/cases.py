@@ -61,7 +61,7 @@ def facts_of(mesh, problem, gauges, *, wanted=1.0, tolerance=0.01, stocks=None, 
     if goals is None:
         goals = tuple(Goal(Key("gauge", name), wanted, "wanted band") for name in gauges.names)
     if stocks is None:
-        stocks = tuple(RegionStock(name, "stuff", 0.0, np.inf) for name in mesh.plan.region_names)
+        stocks = tuple(RegionStock(name, "stuff", 200.0, 3000.0) for name in mesh.plan.region_names)
     return Facts(study, problem, table, gauges, tuple(goals), stocks, Namer())
 
 

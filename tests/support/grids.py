@@ -1,5 +1,7 @@
 """Small sections with meshes made by hand, so that a test knows every node; no mesh generator runs."""
 
+import itertools
+
 import numpy as np
 
 from fem.laws import as_law
@@ -11,7 +13,7 @@ from tests.support.shapes import rect
 
 def box_plan(xs, height, kind="planar", y0=0.0):
     """Return the plan of rectangles side by side, `part 0`, `part 1`, ... between the given x; edges bottom, right, top, left."""
-    parts = [rect(f"part {i}", a, y0, b, y0 + height) for i, (a, b) in enumerate(zip(xs[:-1], xs[1:], strict=True))]
+    parts = [rect(f"part {i}", a, y0, b, y0 + height) for i, (a, b) in enumerate(itertools.pairwise(xs))]
     return build_plan(parts, kind=kind)
 
 
@@ -58,7 +60,7 @@ def _facets(plan, points, cells):
 
 def strip(xs=(0.0, 1.0), cells=8, kind="planar", rows=1, y0=0.0, height=None):
     """Return a bar of parts side by side, `cells` columns in each part; heat runs along x only, if top and bottom are insulated."""
-    x = np.unique(np.concatenate([np.linspace(a, b, cells + 1) for a, b in zip(xs[:-1], xs[1:], strict=True)]))
+    x = np.unique(np.concatenate([np.linspace(a, b, cells + 1) for a, b in itertools.pairwise(xs)]))
     height = float(np.min(np.diff(x))) * rows if height is None else height
     plan = box_plan(xs, height, kind, y0)
     return grid_mesh(plan, x, np.linspace(y0, y0 + height, rows + 1), lambda cx, _: np.searchsorted(xs, cx) - 1)

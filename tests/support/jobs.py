@@ -71,7 +71,13 @@ def bar(columns=6, rows=3, kind="planar"):
     x = np.linspace(0.0, 1.0, 2 * columns + 1) ** 1.1  # not the same everywhere
     x[columns] = 0.5
     x.sort()
-    return grid_mesh(box_plan((0.0, 0.5, 1.0), 0.3, kind), x, np.linspace(0.0, 0.3, rows + 1), lambda c, _: (c > 0.5).astype(int), alternate=True)
+    return grid_mesh(
+        box_plan((0.0, 0.5, 1.0), 0.3, kind),
+        x,
+        np.linspace(0.0, 0.3, rows + 1),
+        lambda c, _: (c > 0.5).astype(int),
+        alternate=True,
+    )
 
 
 def _rising(a):

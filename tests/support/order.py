@@ -19,5 +19,7 @@ def assert_order(errors, order, cap):
     """
     assert len(errors) >= 4, "an order needs four levels"
     seen = observed_orders(errors)
-    assert order - BELOW <= seen[-1] <= order + ABOVE, f"order {seen[-1]:.3f}, theory {order:.3f}; errors {errors}, orders {seen}"
+    assert order - BELOW <= seen[-1] <= order + ABOVE, (
+        f"order {seen[-1]:.3f}, theory {order:.3f}; errors {errors}, orders {seen}"
+    )
     assert errors[-1] <= cap, f"error {errors[-1]:.3g} above {cap:.3g}"

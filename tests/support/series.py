@@ -22,7 +22,10 @@ def film_roots(biot, count=60):
     """Return the roots of beta tan(beta) = Bi, one in each (n pi, n pi + pi/2)."""
     eps = 1e-12
     return np.array(
-        [brentq(lambda b: b * np.sin(b) - biot * np.cos(b), n * np.pi + eps, n * np.pi + np.pi / 2 - eps) for n in range(count)]
+        [
+            brentq(lambda b: b * np.sin(b) - biot * np.cos(b), n * np.pi + eps, n * np.pi + np.pi / 2 - eps)
+            for n in range(count)
+        ]
     )
 
 
@@ -50,7 +53,9 @@ def slab_flux(x, t, *, thick, k, alpha, flux, start):
 def cylinder_held(r, t, *, radius, alpha, start, held):
     """Return T in a long cylinder, uniform at the start, surface held. Carslaw and Jaeger, ch. VII."""
     z = jn_zeros(0, 60)
-    return held + (start - held) * float((2 / (z * j1(z)) * np.exp(-alpha * (z / radius) ** 2 * t) * j0(z * r / radius)).sum())
+    return held + (start - held) * float(
+        (2 / (z * j1(z)) * np.exp(-alpha * (z / radius) ** 2 * t) * j0(z * r / radius)).sum()
+    )
 
 
 def sphere_held(r, t, *, radius, alpha, start, held):

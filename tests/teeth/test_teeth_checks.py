@@ -53,7 +53,11 @@ def test_no_check_says_a_word_on_a_sound_study(sound):
 
 def test_findings_that_block_come_first(sound):
     stocks = (RegionStock("part 0", "clay", 0.0, 310.0),)
-    early = replace(sound, stocks=stocks, figures=replace(sound.figures, grid=replace(sound.figures.grid, origin=sound.figures.grid.t)))
+    early = replace(
+        sound,
+        stocks=stocks,
+        figures=replace(sound.figures, grid=replace(sound.figures.grid, origin=sound.figures.grid.t)),
+    )
     found = check_all(early)
     assert [f.blocks for f in found] == sorted((f.blocks for f in found), reverse=True)
     assert {f.blocks for f in found} == {True, False}
@@ -78,7 +82,9 @@ def test_ledger_fires_when_a_march_loses_heat(monkeypatch, curved):
 
     mesh = strip(cells=4)
     k = (lambda T: 1.0 + 0.001 * T) if curved else 1.0
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], k=k, start=300.0, end=1.0, report_every=0.1)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], k=k, start=300.0, end=1.0, report_every=0.1
+    )
     assert ledger.check(facts_of(mesh, problem, gauges_at())) == []
     monkeypatch.setattr(March, "_advance", lose)
     (finding,) = ledger.check(facts_of(mesh, problem, gauges_at()))
@@ -114,10 +120,14 @@ def sheared(mesh, by):
 def test_extremes_and_mesh_quality_fire_on_obtuse_cells():
     """Obtuse cells couple nodes with the wrong sign; a quench then overshoots, which no refinement of the time steps mends."""
     good = square(6)
-    plan = build_plan([outline("part 0", [(0, 0), (1, 0), (4, 1), (3, 1)], dict(enumerate(("bottom", "right", "top", "left"))))])
+    plan = build_plan(
+        [outline("part 0", [(0, 0), (1, 0), (4, 1), (3, 1)], dict(enumerate(("bottom", "right", "top", "left"))))]
+    )
     leaning = replace(sheared(good, 3.0), plan=plan)
     for mesh, fires in ((good, False), (leaning, True)):
-        problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.bottom", held=400.0)], start=300.0, end=0.01, report_every=0.01)
+        problem = problem_on(
+            mesh.plan, [face(mesh.plan, "part 0.bottom", held=400.0)], start=300.0, end=0.01, report_every=0.01
+        )
         facts = facts_of(mesh, problem, gauges_at())
         assert bool(extremes.check(facts)) == fires
         assert any("wrong sign" in f.message for f in mesh_quality.check(facts)) == fires
@@ -138,7 +148,11 @@ def test_extremes_fires_above_and_below(sound):
 
 @pytest.mark.parametrize(
     ("more", "high", "low"),
-    [({"flux": 10.0}, False, True), ({"flux": -10.0}, True, False), ({"flux": lambda t: 10 * np.sin(9 * t)}, False, False)],
+    [
+        ({"flux": 10.0}, False, True),
+        ({"flux": -10.0}, True, False),
+        ({"flux": lambda t: 10 * np.sin(9 * t)}, False, False),
+    ],
 )
 def test_a_flux_lifts_only_the_bound_that_it_can_reach(more, high, low):
     facts = bar_facts(more=[("part 0.left", more)])
@@ -151,7 +165,9 @@ def test_a_flux_lifts_only_the_bound_that_it_can_reach(more, high, low):
 @pytest.mark.parametrize(("source", "high", "low"), [(50.0, False, True), (-50.0, True, False)])
 def test_a_source_lifts_only_the_bound_that_it_can_reach(source, high, low):
     mesh = strip(cells=4)
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], source=source, start=300.0, end=1.0)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], source=source, start=300.0, end=1.0
+    )
     facts = facts_of(mesh, problem, gauges_at())
     run = facts.study.finest
     said = " ".join(f.message for f in extremes.check(with_finest(facts, peak=run.peak + 900.0, low=run.low - 250.0)))
@@ -165,11 +181,20 @@ def test_a_source_lifts_only_the_bound_that_it_can_reach(source, high, low):
 def test_order_fires_when_the_finest_run_solves_something_else():
     """Two per cent more conductivity on the finest mesh only: differences grow instead of falling by four."""
     mesh = strip(cells=6)
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], start=300.0, end=1.0, report_every=0.1)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", film=(2.0, 500.0))], start=300.0, end=1.0, report_every=0.1
+    )
     other = replace(problem, conductivity=problem_on(mesh.plan, k=1.02).conductivity)
     gauges = gauges_at((0.5, 0.0))
     study = Bench(problem, gauges, tolerance=0.01).first(mesh)
-    last = run(study.finest.mesh, other, gauges, tolerance=0.01, steps=study.levels[0].steps, frame_times=study.finest.frame_times)
+    last = run(
+        study.finest.mesh,
+        other,
+        gauges,
+        tolerance=0.01,
+        steps=study.levels[0].steps,
+        frame_times=study.finest.frame_times,
+    )
     wrong = replace(study, levels=(*study.levels[:-1], last))
     assert order.check(facts_of(mesh, problem, gauges, study=study, wanted=0.01)) == []
     (finding,) = order.check(facts_of(mesh, problem, gauges, study=wrong, wanted=0.01))
@@ -206,7 +231,9 @@ def test_first_transient_fires_while_heat_has_not_crossed_a_cell():
 # --- stock range --------------------------------------------------------------------------------------------------------------------
 
 
-@pytest.mark.parametrize(("low", "high", "count"), [(299.0, 501.0, 0), (299.0, 320.0, 1), (301.0, 501.0, 1), (301.0, 320.0, 2)])
+@pytest.mark.parametrize(
+    ("low", "high", "count"), [(299.0, 501.0, 0), (299.0, 320.0, 1), (301.0, 501.0, 1), (301.0, 320.0, 2)]
+)
 def test_stock_range_fires_outside_of_it_only(sound, low, high, count):
     found = stock_range.check(replace(sound, stocks=(RegionStock("part 0", "clay", low, high),)))
     assert len(found) == count
@@ -220,6 +247,12 @@ def test_stock_range_names_the_highest_excursion_and_its_place(sound):
     assert f"{run.peak.max() - 320.0:.3g} K outside" in finding.message
 
 
+def test_stock_range_says_where_it_can_not_look(sound):
+    (finding,) = stock_range.check(replace(sound, stocks=(RegionStock("part 0", "clay", 0.0, np.inf),)))
+    assert not finding.blocks
+    assert '"clay"' in finding.message
+
+
 # --- corners ------------------------------------------------------------------------------------------------------------------------
 
 
@@ -227,7 +260,9 @@ def ell_facts(points, wanted):
     plan = build_plan([outline("ell", points)])
     mesh = make_mesh(plan)
     labels = [label for c in plan.curves for label in sorted(c.labels)]
-    problem = problem_on(plan, [face(plan, tuple(labels), film=(50.0, 400.0))], start=300.0, end=0.05, report_every=0.01)
+    problem = problem_on(
+        plan, [face(plan, tuple(labels), film=(50.0, 400.0))], start=300.0, end=0.05, report_every=0.01
+    )
     return facts_of(mesh, problem, gauges_at((-0.5, 0.5)), wanted=wanted)
 
 
@@ -271,7 +306,9 @@ def test_mesh_quality_fires_on_flat_cells():
     thin = build_plan([rect("part 0", 0, 0, 1, 0.1)])
     for y, fires in ((np.linspace(0, 0.1, 3), False), (np.array([0.0, 0.01, 0.1]), True)):
         mesh = grid_mesh(thin, np.linspace(0, 1, 9), y)
-        problem = problem_on(thin, [face(thin, "part 0.right", film=(2.0, 500.0))], start=300.0, end=0.1, report_every=0.1)
+        problem = problem_on(
+            thin, [face(thin, "part 0.right", film=(2.0, 500.0))], start=300.0, end=0.1, report_every=0.1
+        )
         found = mesh_quality.check(facts_of(mesh, problem, gauges_at()))
         assert any("flat cells" in f.message for f in found) == fires
     angle = np.degrees(np.arctan(0.01 / 0.125))  # of the flattest cell
@@ -295,7 +332,10 @@ def test_outcome_fires_on_any_run_that_did_not_finish(sound):
 @pytest.mark.parametrize("end", [None, 600.0])
 def test_a_job_in_which_nothing_happens_is_vouched(end):
     """Rounding is no heat that vanished, be it all that there is."""
-    alike = {"hot": {"on": ("slab.right",), "held": 293.15}, "air": {"on": ("slab.left",), "film": {"coefficient": 8.0, "ambient": 293.15}}}
+    alike = {
+        "hot": {"on": ("slab.right",), "held": 293.15},
+        "air": {"on": ("slab.left",), "film": {"coefficient": 8.0, "ambient": 293.15}},
+    }
     record = vouch(slab_docket(end=end, exposures=alike))
     assert record.standing == "vouched"
     assert abs(record.ledger.unexplained) < 1e-6

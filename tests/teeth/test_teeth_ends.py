@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 
+from fem.conduction import Conduction
 from fem.docket import Allowance, Limit
 from fem.history import Key
 from fem.laws import Break, Law
@@ -45,9 +46,6 @@ def assert_kept(record, folder):
     assert all(np.isfinite(v.band) or v.call.value == "too close to call" for v in record.verdicts)
 
 
-CALLS = (0, 1, 5, 20, 40, 80, 120, 160, 200, 240, 280, 320)
-
-
 @pytest.mark.parametrize("limits", [(), LIMITS], ids=["no limits", "limits"])
 def test_interruption_at_every_stage_leaves_a_valid_record(tmp_path, limits):
     total = AfterCalls(10**9)
@@ -56,14 +54,13 @@ def test_interruption_at_every_stage_leaves_a_valid_record(tmp_path, limits):
     asked = 10**9 - total.left
     assert whole.outcome == "finished"
     stages = set()
-    for n in np.unique(np.linspace(0, asked - 1, 14).astype(int)):
+    for n in np.unique(np.linspace(0, asked - 1, 16).astype(int)):
         seen = []
         record = vouch(docket, stop=AfterCalls(int(n)), on_progress=lambda p, seen=seen: seen.append(p.doing))
         assert record.outcome == "interrupted", n
         assert_kept(record, tmp_path / str(n))
-        stages |= {len(record.facts["cells"]), *seen}
-    assert {"first mesh", "steps halved", "cells halved", "cells quartered"} & stages
-    assert 1 in stages  # a record of one unfinished run
+        stages.add(seen[-1])
+    assert stages == {"first mesh", "steps halved", "steps quartered", "cells halved", "cells quartered"}
 
 
 def test_interruption_in_a_later_turn_keeps_the_whole_study_before_it(tmp_path):
@@ -77,7 +74,9 @@ def test_interruption_in_a_later_turn_keeps_the_whole_study_before_it(tmp_path):
 
 
 def test_interruption_of_a_quick_look_and_of_a_steady_job(tmp_path):
-    for n, record in enumerate((look(slab_docket(), stop=lambda: True), vouch(slab_docket(end=None), stop=lambda: True))):
+    for n, record in enumerate(
+        (look(slab_docket(), stop=lambda: True), vouch(slab_docket(end=None), stop=lambda: True))
+    ):
         assert record.outcome == "interrupted"
         assert_kept(record, tmp_path / str(n))
 
@@ -92,7 +91,11 @@ def test_a_quick_look_claims_nothing(tmp_path):
 
 @pytest.mark.parametrize("seconds", [1e-6, 0.05])
 def test_a_deadline_in_the_first_study_leaves_a_record(tmp_path, seconds):
-    record = vouch(slab_docket(gauges=GAUGES, limits=LIMITS, end=86400.0, wanted={"gauges": 0.001}, allowance=Allowance(seconds=seconds)))
+    record = vouch(
+        slab_docket(
+            gauges=GAUGES, limits=LIMITS, end=86400.0, wanted={"gauges": 0.001}, allowance=Allowance(seconds=seconds)
+        )
+    )
     assert_kept(record, tmp_path / "late")
     assert "allowance" in record.outcome or record.turns[-1].then.startswith("stop")
 
@@ -105,7 +108,9 @@ def melting(T):
 def test_newton_that_fails_is_an_outcome_and_keeps_what_came_before():
     """Only the steps that the fault reaches are lost."""
     mesh = strip(cells=4)
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(5.0, 500.0))], k=melting, start=300.0, end=5.0)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", film=(5.0, 500.0))], k=melting, start=300.0, end=5.0
+    )
     result = run(mesh, problem, gauges_at((0.0, 0.0)), tolerance=0.1, first=0.01)
     assert result.outcome is Outcome.newton_failed
     assert len(result.steps) > 3
@@ -126,8 +131,12 @@ def test_a_docket_whose_law_breaks_the_equations_gets_an_open_record():
 
 def test_a_replay_that_fails_is_an_outcome_too():
     mesh = strip(cells=4)
-    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(5.0, 500.0))], k=melting, start=300.0, end=5.0)
-    chosen = run(mesh, problem_on(mesh.plan, problem.faces, start=300.0, end=5.0), gauges_at(), tolerance=0.1, first=0.01)
+    problem = problem_on(
+        mesh.plan, [face(mesh.plan, "part 0.right", film=(5.0, 500.0))], k=melting, start=300.0, end=5.0
+    )
+    chosen = run(
+        mesh, problem_on(mesh.plan, problem.faces, start=300.0, end=5.0), gauges_at(), tolerance=0.1, first=0.01
+    )
     result = run(mesh, problem, gauges_at(), tolerance=0.1, steps=chosen.steps)
     assert result.outcome is Outcome.newton_failed
 
@@ -146,7 +155,9 @@ def test_a_steady_job_that_has_no_solution_says_so():
     """A source that grows faster with temperature than any film can carry off: T'' = -exp(T - 300) runs away (Frank-Kamenetskii)."""
     with np.errstate(over="ignore", invalid="ignore"):
         docket = slab_docket(end=None, exposures={"cold": {"on": ("slab.right",), "held": 300.0}})
-        hot = docket.section.regions[0].model_copy(update={"source": lambda T: 4000.0 * np.exp(np.minimum(T - 300.0, 500.0))})
+        hot = docket.section.regions[0].model_copy(
+            update={"source": lambda T: 4000.0 * np.exp(np.minimum(T - 300.0, 500.0))}
+        )
         docket = docket.model_copy(update={"section": docket.section.model_copy(update={"regions": (hot,)})})
         record = vouch(docket)
     assert record.outcome != "finished"
@@ -155,8 +166,6 @@ def test_a_steady_job_that_has_no_solution_says_so():
 
 def test_a_march_without_a_clock_is_refused():
     mesh = strip(cells=2)
-    from fem.conduction import Conduction
-
     with pytest.raises(ValueError, match="needs a clock"):
         March(Conduction(mesh, problem_on(mesh.plan, begin=None, end=None)), tolerance=1.0)
 

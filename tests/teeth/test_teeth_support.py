@@ -29,7 +29,9 @@ def test_an_order_in_the_window_passes():
     assert observed_orders(falling(1.5)) == pytest.approx([1.5] * 4)
 
 
-@pytest.mark.parametrize("errors", [falling(1.8), falling(2.4), falling(0.0), falling(2.0, count=3), [0.5, 0.1, 0.02, 0.012]])
+@pytest.mark.parametrize(
+    "errors", [falling(1.8), falling(2.4), falling(0.0), falling(2.0, count=3), [0.5, 0.1, 0.02, 0.012]]
+)
 def test_an_order_outside_the_window_or_of_too_few_levels_fails(errors):
     with pytest.raises(AssertionError):
         assert_order(errors, 2.0, cap=1.0)

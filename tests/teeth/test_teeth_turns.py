@@ -68,7 +68,11 @@ def local_docket(wanted=0.05):
     """Return a wide block of which one corner alone is watched, near the only warm stretch of edge."""
     faces = {"jet": {"on": ({"region": "block", "start": (0.0, 0.0), "end": (0.01, 0.0)},), "held": 600.0}}
     return docket_of(
-        [region("block", box(0, 0, 0.2, 0.1))], faces, end=200.0, gauges={"by the jet": (0.014, 0.003)}, wanted=Wanted(gauges=wanted)
+        [region("block", box(0, 0, 0.2, 0.1))],
+        faces,
+        end=200.0,
+        gauges={"by the jet": (0.014, 0.003)},
+        wanted=Wanted(gauges=wanted),
     )
 
 
@@ -164,7 +168,14 @@ def test_a_study_that_broke_off_settles_no_limit():
     assert desk.judged().verdicts[0].call is Call.not_met
     finest = desk.study.finest
     half = Steps(finest.steps.times[: len(finest.steps) // 2], finest.steps.breaks)
-    cut = run(finest.mesh, desk.posed.problem, desk.posed.gauges, tolerance=desk.tolerance, steps=half, frame_times=finest.frame_times)
+    cut = run(
+        finest.mesh,
+        desk.posed.problem,
+        desk.posed.gauges,
+        tolerance=desk.tolerance,
+        steps=half,
+        frame_times=finest.frame_times,
+    )
     broken = replace(desk.study, levels=(*desk.study.levels[:-1], replace(cut, outcome=Outcome.newton_failed)))
     judgement = desk.judged(broken)
     assert judgement.figures.grid.t[-1] < 600.0
