@@ -104,8 +104,14 @@ def _last_column(record: Record) -> str:
 
 
 def _extreme(record: Record, writer: Writer, key: Key, *, lowest: bool) -> Text:
-    value, when = peak_text(writer, record.figures.peak(key, lowest=lowest))
-    return Text.assemble(value, (f"\nat {when}", "dim"))
+    peak = record.figures.peak(key, lowest=lowest)
+    value, when = peak_text(writer, peak)
+    place = ""
+    if (
+        key.kind in ("highest", "lowest") and peak.t > record.figures.grid.t[0]
+    ):  # at the start, all of a region is alike
+        place = f"\n{writer.place(*record.spot(key.name, lowest=lowest))}"
+    return Text.assemble(value, (f"\nat {when}{place}", "dim"))
 
 
 def _steady_table(title: str, record: Record, writer: Writer, keys: Iterable[Key]) -> RenderableType:

@@ -19,7 +19,6 @@ from fem.study import Study
 from fem.tables import figures
 from fem.verdicts import Verdict
 
-
 WANTED = "the wanted band asks for it"
 """Why a goal is there that the docket states."""
 

@@ -167,3 +167,12 @@ class Record:
     fields: Fields
     facts: dict[str, object]
     seconds: float
+
+    def spot(self, region: str, *, lowest: bool = False) -> tuple[float, float]:
+        """Return where a region (or ``""``, the whole section) gets hottest, or coldest, over the whole run, m."""
+        nodes = np.arange(len(self.mesh.points))
+        if region:
+            nodes = np.unique(self.mesh.cells[self.mesh.region == self.mesh.region_names.index(region)])
+        extreme = np.argmin(self.fields.low[nodes]) if lowest else np.argmax(self.fields.peak[nodes])
+        x, y = self.mesh.points[nodes[extreme]]
+        return float(x), float(y)

@@ -2,7 +2,7 @@
 
 import time
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 import scipy.sparse as sp
@@ -91,7 +91,6 @@ class Run:
     start: Floats
     seconds: float
     factorizations: int = 0
-    where: dict[Key, NDArray[np.intp]] = field(default_factory=dict)
 
 
 class Recorder:
@@ -127,7 +126,6 @@ class Recorder:
         self._start_heat = 0.0
         self._last: Step | None = None
         self._end = (np.empty(0), np.empty(0))  # values and rates of the last step's end
-        self.where: list[list[int]] = []
 
     def _name_rows(self, gauges: tuple[str, ...]) -> tuple[Key, ...]:
         keys = [Key("gauge", name) for name in gauges]
@@ -138,19 +136,18 @@ class Recorder:
         keys += [Key("made", name) for name in self._sources]
         return tuple(keys)
 
-    def _state(self, T: Floats, d: Floats | None) -> tuple[Floats, Floats, list[int]]:
-        """Return values and rates of all temperature rows and of the stored heat, and the nodes of the extremes."""
+    def _state(self, T: Floats, d: Floats | None) -> tuple[Floats, Floats]:
+        """Return values and rates of all temperature rows and of the stored heat."""
         rate = np.full(self._c.n, np.nan) if d is None else d
-        values, rates, nodes = [self._probe @ T], [self._probe @ rate], []
+        values, rates = [self._probe @ T], [self._probe @ rate]
         for _, mine, size in self._shares:
             Tm, rm = (T, rate) if len(mine) == len(T) else (T[mine], rate[mine])
             high, low, total = np.argmax(Tm), np.argmin(Tm), size.sum()
             values.append(np.array([Tm[high], Tm[low], size @ Tm / total]))
             rates.append(np.array([rm[high], rm[low], size @ rm / total]))
-            nodes += [int(mine[high]), int(mine[low])]
         values.append(np.array([self._c.heat(T).sum() - self._start_heat]))
         rates.append(np.array([self._c.capacity(T) @ rate]))
-        return np.concatenate(values), np.concatenate(rates), nodes
+        return np.concatenate(values), np.concatenate(rates)
 
     def begin(self, T: Floats) -> None:
         """Note the start, from which stored heat is counted."""
@@ -161,8 +158,8 @@ class Recorder:
         self.heat = self.heat + step.impulse
         dt = step.t1 - step.t0
         smooth = self._last is not None and step.T0 is self._last.T1 and step.d0 is self._last.d1
-        v0, d0 = self._end if smooth else self._state(step.T0, step.d0)[:2]
-        v1, d1, nodes = self._state(step.T1, step.d1)
+        v0, d0 = self._end if smooth else self._state(step.T0, step.d0)
+        v1, d1 = self._state(step.T1, step.d1)
         self._last, self._end = step, (v1, d1)
         heat0, heat1 = self._sum @ self.heat, self._sum @ (self.heat + step.heat)
         made0, made1 = self.made, self.made + step.made
@@ -177,7 +174,6 @@ class Recorder:
             )
         )
         self.times.append((step.t0, step.t1))
-        self.where.append(nodes)
         self.heat, self.made = self.heat + step.heat, made1
 
     def history(self) -> History:
@@ -185,12 +181,6 @@ class Recorder:
         v0, v1, d0, d1 = (np.array([row[i] for row in self._rows]).reshape(-1, len(self.keys)).T for i in range(4))
         t = np.array(self.times).reshape(-1, 2)
         return History(self.keys, t[:, 0].copy(), t[:, 1].copy(), v0, v1, d0, d1)
-
-    def where_of(self) -> dict[Key, NDArray[np.intp]]:
-        """Return, for each row of extremes, the node at which it was found at the end of each step."""
-        nodes = np.array(self.where, dtype=np.intp).reshape(-1, 2 * len(self._shares))
-        names = [Key(kind, name) for name, _, _ in self._shares for kind in ("highest", "lowest")]
-        return {key: nodes[:, i] for i, key in enumerate(names)}
 
 
 def run(
@@ -250,7 +240,7 @@ def run(
         mesh, march.outcome, recorder.history(), Steps(np.array(times), breaks), frames.times,
         frames.fields(conduction.n), peak, low, peak_time, recorder.heat, recorder.made,
         float(gained.sum()), max(float(np.abs(gained).sum()), nothing), start,
-        time.perf_counter() - began, march.factorizations, recorder.where_of(),
+        time.perf_counter() - began, march.factorizations,
     )  # fmt: skip
 
 

@@ -44,7 +44,7 @@ def solve_steady(mesh: Mesh, problem: Problem, gauges: Gauges, *, tolerance: flo
     recorder.add(Step(0.0, 1.0, T, T, still, still, flow, 0.0 * flow, loads.sources, flow, flow))
     return Run(
         mesh, outcome, _flows_only(recorder.history()), Steps(np.array([0.0, 1.0])), np.array([1.0]), T[None, :], T, T, np.ones_like(T),
-        recorder.heat, recorder.made, 0.0, nothing, T, time.perf_counter() - began, count, recorder.where_of(),
+        recorder.heat, recorder.made, 0.0, nothing, T, time.perf_counter() - began, count,
     )  # fmt: skip
 
 

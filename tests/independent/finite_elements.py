@@ -34,7 +34,8 @@ def mesh_of(job: Job, size: Callable[[str], float]) -> ng.Mesh:
         face.faces.name, face.faces.maxh = f"r{i}", size(job.regions[i]["name"])
     shape = occ.Glue(faces)
     for edge in shape.edges:
-        edge.name = _facing(job, edge.center)
+        middle, along = edge.center, edge.end - edge.start
+        edge.name = _facing(job, middle) if _outer(job, (middle.x, middle.y), (along.x, along.y)) else "inner"
     return ng.Mesh(occ.OCCGeometry(shape, dim=2).GenerateMesh(maxh=1.0, grading=0.3))
 
 
@@ -47,7 +48,23 @@ def _facing(job: Job, at: occ.Pnt) -> str:
             for (x0, y0), (x1, y1), own in ends:
                 if edge in (own, "*") and _on((at.x, at.y), (x0, y0), (x1, y1)):
                     return f"e{e}"
-    return "inner or insulated"
+    return "insulated"
+
+
+def _outer(job: Job, middle: tuple[float, float], along: tuple[float, float]) -> bool:
+    """Return whether one side of an edge is outside every region: an interface is no place for an exposure."""
+    nudge = 1e-6 / np.hypot(*along)
+    sides = [(middle[0] - s * nudge * along[1], middle[1] + s * nudge * along[0]) for s in (1.0, -1.0)]
+    return not all(any(_within(side, region["points"]) for region in job.regions) for side in sides)
+
+
+def _within(p: tuple[float, float], outline: list[tuple[float, float]]) -> bool:
+    """Even-odd rule."""
+    inside = False
+    for (x0, y0), (x1, y1) in zip(outline, outline[1:] + outline[:1], strict=True):
+        if (y0 > p[1]) != (y1 > p[1]) and p[0] < x0 + (p[1] - y0) * (x1 - x0) / (y1 - y0):
+            inside = not inside
+    return inside
 
 
 def _on(p: tuple[float, float], a: tuple[float, float], b: tuple[float, float]) -> bool:

@@ -4,6 +4,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from scipy.linalg import expm
 
 from fem.conduction import Conduction
 from fem.history import Key
@@ -142,3 +143,21 @@ def test_peaks_and_lows_are_those_of_all_steps():
     assert result.peak_time[np.argmax(result.peak)] == 1.0
     frames = result.frames[result.frame_times == 1.0]
     assert frames.shape == (1, len(mesh.points))
+
+
+@pytest.mark.parametrize("tolerance", [1.0, 1e-2, 1e-4])
+def test_no_step_errs_by_more_than_its_tolerance(tolerance):
+    """Each step against the matrix exponential from where it began; as the quench dies out steps grow, and few are tried in vain."""
+    mesh = strip(cells=12)
+    problem = problem_on(mesh.plan, [face(mesh.plan, "part 0.right", film=(50.0, 800.0))], start=300.0, end=2.0)
+    c = Conduction(mesh, problem)
+    matrix = c.stiffness(0.0, c.start()).toarray() + np.diag(c.loads(0.0, c.start()).slope)
+    rates = -matrix / c.capacity(c.start())[:, None]
+    march = March(c, tolerance=tolerance, first=1e-3)
+    steps = list(march)
+    for step in steps:
+        exact = 800.0 + expm((step.t1 - step.t0) * rates) @ (step.T0 - 800.0)
+        assert np.abs(step.T1 - exact).max() <= tolerance
+    sizes = [step.t1 - step.t0 for step in steps]
+    assert max(sizes) >= 16 * sizes[0]
+    assert march.rejected <= 0.2 * len(steps)
