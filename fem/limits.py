@@ -137,9 +137,9 @@ def _verdict(
     docket: Docket, limit: Limit, margin: float, band: float, t: float, crossing: tuple[float, float, float] | None
 ) -> Verdict:
     call = Call.too_close
-    if margin - band >= 0.0 and np.isfinite(band):
+    if np.isfinite(band) and margin - band >= 0.0:
         call = Call.met
-    elif margin + band < 0.0 and np.isfinite(band):
+    elif np.isfinite(band) and margin + band < 0.0:
         call = Call.not_met
     return Verdict(
         limit.name, limit.sentence(docket.units), call, float(margin), float(band), t, crossing, limit.rate is not None

@@ -39,13 +39,14 @@ class Progress:
 
 
 class Stopped(Exception):
-    """Work was stopped; carries what the interrupted run had computed.
+    """Work was stopped; carries what was computed by then.
 
     Attributes
     ----------
     why : str
         "interrupted" or "allowance".
     partial : Run
+        The finest run that reached its end, or else the one that was under way.
     """
 
     def __init__(self, why: str, partial: Run) -> None:
@@ -118,6 +119,9 @@ class Bench:
         self._on_progress, self._stop = on_progress, stop
         self._done = self._planned = 0.0
         self._began = time.perf_counter()
+        self._best: Run | None = (
+            None  # the finest run that reached its end, kept for a stop before the first study is whole
+        )
         self.pace = 0.0  # seconds per unit of work, from the last run
 
     # --- work and time ----------------------------------------------------------------------------------------------------------
@@ -183,9 +187,11 @@ class Bench:
 
     def _check(self, result: Run) -> None:
         if self._stop is not None and self._stop():
-            raise Stopped("interrupted", result)
+            raise Stopped("interrupted", self._best or result)
         if result.outcome is Outcome.stopped or time.perf_counter() > self.deadline:
-            raise Stopped("allowance", result)
+            raise Stopped("allowance", self._best or result)
+        if self._best is None or len(result.mesh.cells) > len(self._best.mesh.cells):
+            self._best = result
 
     def _watch(self, doing: str, cells: int, steps: Steps | None) -> Callable[[float], bool]:
         begin, end = self.problem.begin or 0.0, self.problem.end or 1.0

@@ -17,7 +17,7 @@ def found_text(judgement: Judgement, names: Namer) -> str:
                 f"widest: {too_wide(worst.goal.key)} at {at}, {worst.total:.2g} times the band asked for, mostly owed by {owed}"
             )
         else:
-            parts.append(f"every band is within what was asked (widest {worst.total:.2g} of it)")
+            parts.append(f"every band is within what was asked at the reporting times (widest {worst.total:.2g} of it)")
     close = [v.limit for v in judgement.verdicts if v.call is Call.too_close]
     if close:
         parts.append("too close to call: " + ", ".join(f'"{name}"' for name in close))

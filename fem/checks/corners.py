@@ -39,8 +39,9 @@ def _reentrant(facts: Facts) -> list[Finding]:
         found.append(
             Finding(
                 "corner",
-                f"re-entrant corner of {np.rad2deg(angle):.0f} degrees at {facts.names.place(x, y)}: the temperature there is finite and "
-                f"in doubt by {facts.names.difference(near)}; the heat flux density at the point has no finite value and so no band",
+                f"re-entrant corner of {np.rad2deg(angle):.0f} degrees at {facts.names.place(x, y)}: the two finest meshes differ by up to "
+                f"{facts.names.difference(near)} in the cells next to it; the heat flux density at the point itself has no finite value, and "
+                f"so no band",
                 "",
                 float(x),
                 float(y),

@@ -9,7 +9,10 @@ def check(facts: Facts) -> list[Finding]:
     """Report a run that did not finish, with how far it came."""
     found = []
     for run in facts.study.runs:
-        if run.outcome is Outcome.finished:
+        if run.outcome in (
+            Outcome.finished,
+            Outcome.stopped,
+        ):  # a stop is told as what it was: the user's or the allowance's
             continue
         reached = facts.names.time(float(run.history.t1[-1])) if len(run.history.t1) else "the first step"
         found.append(

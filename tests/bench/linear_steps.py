@@ -14,20 +14,21 @@ STEPS = 40
 ROUNDS = 9
 
 
-def _substitutions(solver: StageSolver, conduction: Conduction, dt: float, count: int) -> float:
-    """Return the CPU seconds of one factorization of the step matrix and `count` back-substitutions."""
-    heat = np.random.default_rng(1).random(len(conduction.free))
+def _least(solver: StageSolver, conduction: Conduction, sizes: list[float], count: int) -> float:
+    """Return the CPU seconds of factorizing the step matrix for each gamma dt [s], and of `count` back-substitutions."""
+    heat, start = np.random.default_rng(1).random(len(conduction.free)), conduction.start()
     solver.factorizer.forget()
 
     def work() -> None:
-        solver.prepare(0.0, conduction.start(), dt, fresh=True)
+        for size in sizes:
+            solver.prepare(0.0, start, size, fresh=True)
         for _ in range(count):
             solver.filter(heat)
 
     return cpu(work)
 
 
-def _replayed(conduction: Conduction, stages: int) -> float:
+def _replayed(conduction: Conduction) -> float:
     march = March(conduction, tolerance=0.1, steps=equal_steps(STEPS))
     return cpu(lambda: [None for _ in march])
 
@@ -50,8 +51,8 @@ def rows() -> list[Row]:
         solver = StageSolver(conduction, 1e-6)
         dt = END / STEPS / 4.0
         value, ours, least = ratio(
-            lambda c=conduction: _replayed(c, 5),
-            lambda c=conduction, s=solver, d=dt: _substitutions(s, c, d, 5 * STEPS),
+            lambda c=conduction: _replayed(c),
+            lambda c=conduction, s=solver, d=dt: _least(s, c, [d], 5 * STEPS),
             ROUNDS,
         )
         note = (
@@ -65,14 +66,13 @@ def rows() -> list[Row]:
 def _chosen_row(conduction: Conduction, solver: StageSolver) -> Row:
     """Return the row of a march that chooses its steps: as many factorizations as it did, and 6 substitutions a step."""
     _, march, sizes = _chosen(conduction)
-    taken = len(sizes) + march.rejected
-    per_factor = 6.0 * taken / march.factorizations
-
-    def least() -> float:
-        whole = _substitutions(solver, conduction, sizes[0] / 4.0, round(per_factor))
-        return whole * march.factorizations
-
-    value, ours, theirs = ratio(lambda: _chosen(conduction)[0], least, ROUNDS)
+    taken, changes = len(sizes) + march.rejected, sorted({round(size, 9) for size in sizes})
+    factors = [changes[i % len(changes)] / 4.0 for i in range(march.factorizations)]
+    value, ours, theirs = ratio(
+        lambda: _chosen(conduction)[0],
+        lambda: _least(solver, conduction, factors, 6 * taken),
+        ROUNDS,
+    )
     note = (
         f"{taken} steps ({march.rejected} rejected), {march.factorizations} factorizations, {6 * taken} substitutions; "
         f"{ours:.3f} against {theirs:.3f} s"

@@ -134,9 +134,7 @@ class Run:
         u, v = self.space.TnT()
         start = ng.CoefficientFunction([float(s) for s in self.job.starts])
         rho = ng.CoefficientFunction([s["density"][0][1] for s in self.job.stocks])
-        weight = rho * ng.CoefficientFunction([
-            _table(stock["specific_heat"], start)[0] for stock in self.job.stocks
-        ])
+        weight = rho * ng.CoefficientFunction([_table(stock["specific_heat"], start)[0] for stock in self.job.stocks])
         mass = ng.BilinearForm(weight * u * v * ng.dx).Assemble()
         load = ng.LinearForm(weight * start * v * ng.dx).Assemble()
         self.T.vec.data = mass.mat.Inverse(inverse="sparsecholesky") * load.vec

@@ -64,6 +64,17 @@ def test_kept_factors_stay_right_while_others_come_and_go(backend):
     del first
 
 
+def test_the_factor_that_was_used_last_stays_longest():
+    _, lower = matrix()
+    worker = Factorizer(lower.indptr, lower.indices)
+    for key in range(KEPT):
+        worker.factor(lower.data, key=key)
+    worker.recall(0)
+    worker.factor(lower.data, key=KEPT)
+    assert worker.recall(0) is not None
+    assert worker.recall(1) is None
+
+
 @pytest.mark.parametrize("backend", [True, False], indirect=True, ids=["CHOLMOD", "SuperLU"])
 @pytest.mark.parametrize("fault", ["nan", "zero"])
 def test_what_can_not_be_factored_is_said(backend, fault):

@@ -65,6 +65,15 @@ def test_radiation_far_from_the_first_guess_is_found():
         assert result.frames[-1][right] == pytest.approx([exact, exact], rel=1e-9)
 
 
+def test_radiation_to_the_cold_sky_is_found_though_newton_alone_would_overshoot():
+    """From 3 K Newton's first step is some 1e14 K, and every further one takes off a quarter only: damping must do it."""
+    mesh, q = strip(cells=3), 1e9
+    faces = [face(mesh.plan, "part 0.left", flux=q), face(mesh.plan, "part 0.right", radiant=(0.5, 3.0))]
+    result = solve_steady(mesh, still(mesh.plan, faces, k=1e9), NONE, tolerance=1e-6)
+    assert result.outcome is Outcome.finished
+    assert result.frames[-1].max() == pytest.approx((3.0**4 + q / 0.5 / STEFAN_BOLTZMANN) ** 0.25 + q / 1e9, rel=1e-6)
+
+
 def test_a_steep_conductivity_is_found():
     """k = exp(T / 100), ends 300 K and 600 K: Kirchhoff's transform exp(T / 100) is straight."""
     mesh = strip(cells=64)
