@@ -1,5 +1,6 @@
 """The docket: all that a job is, as frozen models. Inside all is SI and kelvin; files are `fem.docket_file`'s."""
 
+from collections.abc import Mapping
 from pathlib import Path
 from typing import Any, ClassVar, Self
 
@@ -17,7 +18,7 @@ from fem.docket_terms import Allowance, Clock, Start, Variant, Wanted
 from fem.errors import DocketError
 from fem.log_folder import LogFolder
 from fem.stock import Stock, library
-from fem.strict import Strict, fault, raise_all
+from fem.strict import Strict, fault, nearest, raise_all, unknown
 from fem.units import SI, FileUnits, Reading, reading
 
 __all__ = [
@@ -41,6 +42,11 @@ __all__ = [
 
 
 LONGEST_TITLE = 200
+FILE_KEYS = (
+    *("docket", "section", "region", "stock", "exposure", "clock", "start", "gauge", "limit"),
+    *("wanted", "allowance", "variant", "sources"),
+)
+"""What a file holds at its top."""
 
 
 class Docket(Strict):
@@ -126,6 +132,11 @@ class Docket(Strict):
             data["stock"] = {name: _named(name, stock) for name, stock in data["stock"].items()}
         return data
 
+    @classmethod
+    def file_keys(cls) -> tuple[str, ...]:
+        """Return the keys that a file may use; its reader takes [docket] apart into title and units."""
+        return FILE_KEYS
+
     @model_validator(mode="after")
     def _links(self, info: core_schema.ValidationInfo) -> Self:
         context = reading(info.context)
@@ -207,11 +218,35 @@ class Docket(Strict):
         """
         found = [variant for variant in self.variants if variant.name == name]
         if not found:
-            known = ", ".join(variant.name for variant in self.variants) or "none"
-            raise DocketError.single("variant", f'"{name}"', f"the variants {known}", "use one of these")
-        form = changed(self.to_form(live=True), found[0].changes)
-        del form["docket"], form["variant"]
-        data = {**form, "title": f"{self.title} — {name}".strip(" —")[:LONGEST_TITLE], "units": self.units}
+            allowed, hint = unknown("the variants", name, (variant.name for variant in self.variants))
+            raise DocketError.single("variant", f'"{name}"', allowed, hint)
+        title = f"{self.title} — {name}".strip(" —")[:LONGEST_TITLE]
+        return self.with_changes(found[0].changes, title=title, variants=False)
+
+    def with_changes(
+        self, changes: Mapping[str, Any], *, title: str | None = None, variants: bool = True
+    ) -> "Docket":
+        """Return the docket with the values at some paths changed.
+
+        Parameters
+        ----------
+        changes : mapping
+            Path such as ``exposure.kiln.film.coefficient`` and new value, in the file's terms and units.
+        title : str, optional
+            Of the new docket; that of this one by default.
+        variants : bool
+            Whether the new docket keeps the variants of this one.
+
+        Raises
+        ------
+        DocketError
+            If a path leads nowhere, or a value is refused.
+        """
+        form = changed(self.to_form(live=True), changes)
+        del form["docket"]
+        if not variants:
+            del form["variant"]
+        data = {**form, "title": self.title if title is None else title, "units": self.units}
         return Docket.read(data, Reading(units=self.units, logs=self._logs))
 
 
@@ -229,10 +264,32 @@ def _validate(docket: Docket, data: dict[str, Any], context: Reading) -> None:
     DocketError
         With every problem: of the parts, and of the links between those parts that are sound.
     """
+    validate = type(docket).__pydantic_validator__.validate_python
     try:
-        type(docket).__pydantic_validator__.validate_python(data, self_instance=docket, context=context)
+        validate(data, self_instance=docket, context=context)
     except ValidationError as error:
-        shaped = Docket.from_short(data)
         faults = error.errors(include_url=False)
+        meant, strangers = _as_meant(data)
+        if strangers:  # the rest is judged as it was meant, so that one misspelt key is one fault
+            faults = [line for line in faults if line["loc"] in strangers]
+            try:
+                validate(meant, self_instance=docket, context=context)
+            except ValidationError as others:
+                faults += others.errors(include_url=False)
+        shaped = Docket.from_short(meant)
         linked = link_faults(Parts.salvaged(shaped, library(), context))
         raise docket_error(faults, linked, shaped) from None
+
+
+def _as_meant(data: dict[str, Any]) -> tuple[dict[str, Any], list[tuple[str, ...]]]:
+    """Return the docket with its unknown keys read as the nearest that is missing, and the places of these keys."""
+    meant = dict(data)
+    strangers = [key for key in data if key not in (*FILE_KEYS, *Docket.model_fields)]
+    for key in strangers:
+        value, near = meant.pop(key), nearest(key, FILE_KEYS)
+        if key == "void" and isinstance(value, list) and isinstance(meant.get("region"), list):
+            voids = [{**item, "void": True} for item in value if isinstance(item, dict)]
+            meant["region"] = [*meant["region"], *voids]
+        elif near and near not in meant:
+            meant[near] = value
+    return meant, [(key,) for key in strangers]

@@ -7,7 +7,7 @@ from pydantic_core import InitErrorDetails
 
 from fem.errors import DocketError, Problem, shown
 from fem.stock import PROPERTIES, Stock
-from fem.strict import nearest, unknown
+from fem.strict import nearest, unknown_key
 
 LISTS = ("region", "exposure", "gauge", "limit", "variant")
 """Lists of a docket whose parts have names."""
@@ -26,13 +26,27 @@ def docket_error(faults: Iterable[Any], linked: Iterable[InitErrorDetails], data
         What was read, for the names of the parts.
     """
     problems = [
-        _problem(line["loc"], line["type"], line["msg"], line.get("ctx", {}), line["input"], data) for line in faults
+        _problem(line["loc"], line["type"], line["msg"], line.get("ctx", {}), line["input"], data) for line in _each_log_once(faults)
     ]
     for line in linked:
         kind = line["type"]
         context = {} if isinstance(kind, str) else kind.context or {}
         problems.append(_problem(line.get("loc", ()), "refused", "", context, line["input"], data))
     return DocketError(dict.fromkeys(problems))
+
+
+def _each_log_once(faults: Iterable[Any]) -> list[Any]:
+    """Return the faults without those of a log that were listed where another value reads the same log."""
+    seen: set[tuple[Any, ...]] = set()
+    kept = []
+    for line in faults:
+        last = str(line["loc"][-1]) if line["loc"] else ""
+        of_log = line["loc"][:1] != ("variant",) and (last == "log" or ", " in last)  # "kiln.csv, line 3"
+        about = (last, str(line["input"]), line["msg"])
+        if not of_log or about not in seen:
+            kept.append(line)
+        seen.add(about)
+    return kept
 
 
 def _problem(
@@ -45,7 +59,7 @@ def _problem(
     if kind == "missing":
         return Problem(place, "", f"{loc[-1]} is required", f"add {loc[-1]}")
     if kind == "extra_forbidden":
-        allowed, hint = unknown("the keys", str(loc[-1]), _stock_keys(loc))
+        allowed, hint = unknown_key(str(loc[-1]), _stock_keys(loc))
         return Problem(place, found, allowed, hint)
     if kind == "literal_error":
         expected = str(ctx["expected"])

@@ -3,13 +3,12 @@
 TOML 1.0 is read by the standard library; files that exist are changed through tomlkit, which keeps comments and layout.
 """
 
-import os
-import tempfile
 import tomllib
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
+from fem.atomic import whole_file
 from fem.docket import Docket
 from fem.docket_form import FORMAT, changed
 from fem.docket_text import merged, new_text
@@ -17,7 +16,7 @@ from fem.docket_zip import MAX_TEXT, SUFFIX, open_zip, zip_bytes
 from fem.errors import DocketError, Problem, shown
 from fem.log_folder import LogFolder
 from fem.schedules import Log
-from fem.strict import unknown
+from fem.strict import unknown, unknown_key
 from fem.units import LENGTHS, TEMPERATURES, TIMES, FileUnits, Reading
 
 HEADER = {"length": LENGTHS, "time": TIMES, "temperature": TEMPERATURES}
@@ -120,7 +119,7 @@ def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[s
         raise DocketError.single("docket, format", "" if given is None else shown(given), f"{FORMAT}", hint)
     problems = []
     for key in head.keys() - {"format", "title", *HEADER}:
-        allowed, hint = unknown("the keys", key, ("format", "title", *HEADER))
+        allowed, hint = unknown_key(key, ("format", "title", *HEADER))
         problems.append(Problem(f"docket, {key}", shown(head[key]), allowed, hint))
     units = {"length": "mm", "time": "s", "temperature": "degC"}
     for key, choices in HEADER.items():
@@ -203,7 +202,8 @@ def write_docket(docket: Docket, path: Path | str) -> None:
         )
     _logs_beside(docket, path)
     text = update_text(_file_text(path), docket) if path.exists() else to_text(docket)
-    write_atomic(path, text.encode())
+    with whole_file(path) as draft:
+        draft.write_bytes(text.encode())
 
 
 def pack(path: Path | str, to: Path | str | None = None) -> Path:
@@ -218,23 +218,10 @@ def pack(path: Path | str, to: Path | str | None = None) -> Path:
     docket, text = read_docket(path), _file_text(path)
     target = Path(to) if to is not None else path.with_name(path.name.removesuffix(SUFFIX) + ".zip")
     names = dict.fromkeys(log.log for log in logs_of(docket))
-    write_atomic(target, zip_bytes(path.name, text, {name: docket.logs.read(name) for name in names}))
+    content = zip_bytes(path.name, text, {name: docket.logs.read(name) for name in names})
+    with whole_file(target) as draft:
+        draft.write_bytes(content)
     return target
-
-
-def write_atomic(path: Path, content: bytes) -> None:
-    """Write a file whole or not at all."""
-    handle, name = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.")
-    try:
-        with os.fdopen(handle, "wb") as stream:
-            stream.write(content)
-            stream.flush()
-            os.fsync(stream.fileno())
-        Path(name).chmod(0o644)
-        Path(name).replace(path)
-    except BaseException:
-        Path(name).unlink(missing_ok=True)
-        raise
 
 
 def _logs_beside(docket: Docket, path: Path) -> None:

@@ -12,7 +12,7 @@ from fem.laws import Law
 from fem.schedule_base import OwnKind
 from fem.schedules import Schedule, Scheduled
 from fem.stock import PROPERTIES
-from fem.strict import Strict, unknown
+from fem.strict import Strict, unknown, unknown_key
 from fem.units import FileUnits, Quantity, written
 
 FORMAT = 1
@@ -195,7 +195,8 @@ def _change(form: Form, path: str, value: Any) -> None:
                 here[words[-1]] = value  # a key that was left out: whether it may stand here is judged as in a file
                 return
             known = [str(_label(item)) for item in here] if isinstance(here, list) else _keys(here)
-            allowed, hint = unknown(f'below "{".".join(words[:done])}":' if done else "the tables", words[done], known)
+            what = f'below "{".".join(words[:done])}":' if done else "the tables"
+            allowed, hint = (unknown if isinstance(here, list) else unknown_key)(what=what, word=words[done], known=known)
             raise DocketError.single(path, shown(value), allowed, hint)
         key, count = step
         done += count

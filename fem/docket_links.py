@@ -60,7 +60,7 @@ def _stocks(parts: Parts) -> list[InitErrorDetails]:
         if not region.stock or region.stock in parts.stocks or region.stock in parts.library:
             continue
         _, hint = unknown("", region.stock, [*parts.stocks, *parts.library])
-        own = ", ".join(sorted(parts.stocks)) or "none"
+        own = ", ".join(f'"{name}"' for name in sorted(parts.stocks)) or "none"
         allowed = f"own stock ({own}) or one of the {len(parts.library)} of the library"
         faults.append(
             fault(("section", "region", i, "stock"), region.stock, allowed, f"{hint} (heatvouch stock lists them)")

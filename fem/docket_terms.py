@@ -65,7 +65,7 @@ class Allowance(Strict):
     """What the work may cost."""
 
     cells: int = Field(
-        100_000, ge=100, le=5_000_000, description="Most cells of the finest mesh.", json_schema_extra={"unit": "cells"}
+        500_000, ge=100, le=5_000_000, description="Most cells of the finest mesh.", json_schema_extra={"unit": "cells"}
     )
     seconds: Seconds = Field(300.0, description="Longest wall time of the work; seconds in every file.")
 

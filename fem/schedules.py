@@ -22,7 +22,7 @@ from fem.laws import Law, as_law, constant
 from fem.logged import Log
 from fem.ramps import Firing, FiringPlan, FiringStep, Points
 from fem.schedule_base import Schedule, Value, pasted
-from fem.strict import fault, raise_all, unknown
+from fem.strict import fault, raise_all, unknown_key
 from fem.units import Quantity, Reading, Temperature, Time, reading, said
 
 __all__ = [
@@ -174,7 +174,7 @@ class Scheduled:
         if named:
             raise refusal(self.allowed(), f"{' and '.join(named)} are two schedules: keep one")
         word = next(iter(value), "")
-        raise refusal(self.allowed(), unknown("the keys", word, models)[1])
+        raise refusal(self.allowed(), unknown_key(word, models)[1])
 
     def _callable(self, value: Law | Callable[..., Any]) -> ScheduleLike:
         try:

@@ -26,11 +26,39 @@ def nearest(word: str, known: Iterable[str]) -> str:
 
 
 def unknown(what: str, word: str, known: Iterable[str]) -> tuple[str, str]:
-    """Return what is allowed, and how to mend it, for a word that is not among the known ones."""
+    """Return what is allowed, and how to mend it, for a name that is not among the known ones, the nearest first.
+
+    Names are quoted: they may hold blanks and commas.
+
+    Examples
+    --------
+    >>> unknown("the gauges", "rin", ["bore, middle", "rim"])
+    ('the gauges "rim", "bore, middle"', 'did you mean "rim"?')
+    >>> unknown("a readable file:", "x.csv", [])
+    ('a readable file: there is none', 'check the name, or add what is missing')
+    """
+    return _choice(what, word, known, '"{}"')
+
+
+def unknown_key(word: str, known: Iterable[str], what: str = "the keys") -> tuple[str, str]:
+    """Return the same for a word of the file's own language, which stands in no quotes there.
+
+    Examples
+    --------
+    >>> unknown_key("emisivity", ["surroundings", "emissivity"])
+    ('the keys emissivity, surroundings', 'did you mean "emissivity"?')
+    """
+    return _choice(what, word, known, "{}")
+
+
+def _choice(what: str, word: str, known: Iterable[str], form: str) -> tuple[str, str]:
     known = tuple(dict.fromkeys(known))
+    if not known:
+        return f"{what.removesuffix(':')}: there is none", "check the name, or add what is missing"
     close = nearest(word, known)
+    ordered = sorted(known, key=lambda name: name != close)
     return (
-        f"{what} {', '.join(known)}" if known else f"no {what}",
+        f"{what} {', '.join(form.format(name) for name in ordered)}",
         f'did you mean "{close}"?' if close else "use one of these",
     )
 
@@ -101,7 +129,7 @@ class Strict(BaseModel):
         whole = {key: tuples(value) for key, value in data.items() if key in known}
         lines = []
         for key in strangers:
-            allowed, hint = unknown("the keys", key, cls.file_keys())
+            allowed, hint = unknown_key(key, cls.file_keys())
             lines.append(InitErrorDetails(type=refusal(allowed, cls.HINTS.get(key, hint)), loc=(key,), input=data[key]))
         try:
             model = handler(whole)

@@ -54,6 +54,10 @@ class Stopped(Exception):
         self.why, self.partial = why, partial
 
 
+class TooDear(Exception):
+    """A study would not fit the allowance; says what it would take."""
+
+
 @dataclass(frozen=True)
 class Study:
     """Runs on nested meshes and halved steps.
@@ -217,10 +221,22 @@ class Bench:
         self.plan(self.work(len(mesh.cells), 50))
         return Study((self.solve(mesh, "quick look", first=self.first_step(mesh)),), (), ())
 
-    def first(self, mesh: Mesh) -> Study:
-        """Return the first study on a mesh: choose the steps, then replay them on two finer meshes and with two finer steps."""
+    def first(self, mesh: Mesh, *, most_seconds: float = np.inf) -> Study:
+        """Return the first study on a mesh: choose the steps, then replay them on two finer meshes and with two finer steps.
+
+        Raises
+        ------
+        TooDear
+            If, going by the first run, the rest would take more than `most_seconds`.
+        Stopped
+            If the user or the deadline ended it.
+        """
         self.plan(self.work(len(mesh.cells), 50))
-        return self._on(mesh, None)
+        chosen = self.solve(mesh, "first mesh", first=self.first_step(mesh))
+        seconds = self.pace * self._study_work(len(mesh.cells), len(chosen.steps))
+        if seconds > most_seconds:
+            raise TooDear(f"about {seconds:.0f} s")
+        return self._around(chosen)
 
     def first_step(self, mesh: Mesh) -> float:
         """Return the first step after a jump of data: h^2/alpha of the finest mesh to come, median over the cells on curves, s."""
@@ -236,15 +252,19 @@ class Bench:
             alpha[mine] = k(t=self.problem.begin, x=x[mine], y=y[mine], T=T) / rho_c(x=x[mine], y=y[mine], T=T)
         return float(np.median((mesh.h[cells] / 4.0) ** 2 / alpha))
 
-    def _on(self, mesh: Mesh, steps: Steps | None) -> Study:
+    def _on(self, mesh: Mesh, steps: Steps) -> Study:
         """Return a whole study whose first mesh is the given one."""
-        middle, up = uniform(mesh)
-        fine, up2 = uniform(middle)
-        chosen = self.solve(mesh, "first mesh", steps=steps, first=self.first_step(mesh))
+        self.plan(self.work(len(mesh.cells), len(steps)))
+        return self._around(self.solve(mesh, "first mesh", steps=steps))
+
+    def _around(self, chosen: Run) -> Study:
+        """Return the study whose first run is given: two finer meshes and two finer steps beside it."""
         if chosen.outcome is not Outcome.finished:
             return Study((chosen,), (), ())
-        steps = chosen.steps
-        self._plan_study(mesh, steps)
+        mesh, steps = chosen.mesh, chosen.steps
+        self.plan(self._study_work(len(mesh.cells), len(steps)))
+        middle, up = uniform(mesh)
+        fine, up2 = uniform(middle)
         timing = (chosen, *self._halvings(mesh, steps, chosen.frame_times))
         levels = (
             chosen,
@@ -253,9 +273,10 @@ class Bench:
         )
         return Study(levels, (up, up2), () if self.problem.steady else timing)
 
-    def _plan_study(self, mesh: Mesh, steps: Steps) -> None:
-        m, n = len(mesh.cells), len(steps)
-        self.plan(self.work(4 * m, n) + self.work(16 * m, n) + 6.0 * self.work(m, n))
+    def _study_work(self, cells: int, steps: int) -> float:
+        """Return the work of a study besides its first run."""
+        timing = 0.0 if self.problem.steady else 6.0 * self.work(cells, steps)
+        return self.work(4 * cells, steps) + self.work(16 * cells, steps) + timing
 
     def _halvings(self, mesh: Mesh, steps: Steps, frame_times: Floats) -> tuple[Run, ...]:
         if self.problem.steady:
@@ -276,13 +297,11 @@ class Bench:
 
     def finer_cells(self, study: Study, mesh: Mesh) -> Study:
         """Return a study on a locally refined first mesh, with the same steps."""
-        self._plan_study(mesh, study.levels[0].steps)
         return self._on(mesh, study.levels[0].steps)
 
     def finer_steps(self, study: Study, owing: NDArray[np.bool_]) -> Study:
         """Return the study with the owing steps halved, on the same first mesh."""
         steps = study.levels[0].steps.halved_where(owing)
-        self._plan_study(study.levels[0].mesh, steps)
         return self._on(study.levels[0].mesh, steps)
 
 

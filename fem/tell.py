@@ -1,5 +1,7 @@
 """What a judgement shows, in one sentence for the user."""
 
+import numpy as np
+
 from fem.checks.facts import Namer
 from fem.judge import Judgement, too_wide
 from fem.verdicts import Call
@@ -7,6 +9,8 @@ from fem.verdicts import Call
 
 def found_text(judgement: Judgement, names: Namer) -> str:
     """Return what was found: the worst band, the limits, the findings that block."""
+    if not np.isfinite(judgement.figures.band).any():
+        return "one run alone has no band"
     parts = []
     if judgement.needs:
         worst = judgement.needs[0]

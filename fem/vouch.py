@@ -6,6 +6,7 @@ docket -> plan -> mesh -> study -> judgement -> turn -> ... -> record
 import time
 from collections.abc import Callable
 
+import numpy as np
 from threadpoolctl import threadpool_limits
 
 from fem.docket import Docket
@@ -15,14 +16,19 @@ from fem.mesh import make_mesh
 from fem.pose import Posed, pose
 from fem.record import Record, TurnNote
 from fem.recording import record_of
-from fem.study import Bench, Progress, Stopped, Study
+from fem.run import Run
+from fem.study import Bench, Progress, Stopped, Study, TooDear
 from fem.tell import found_text
-from fem.turns import Turn, Turner, take
+from fem.turns import Turner, take
 
 OnProgress = Callable[[Progress], None]
 OnTurn = Callable[[TurnNote], None]
 Stop = Callable[[], bool]
 
+THREE_MESHES = 16
+"""Cells of the finest of three meshes over those of the first."""
+FIRST_MESHES = (1.0, 0.5)
+"""Finenesses of the first mesh, the usual one first."""
 STEP_PART = 0.2
 """Local error per step as a part of the narrowest wanted band: the time part then stays well below the space part."""
 
@@ -50,30 +56,65 @@ def vouch(
     with threadpool_limits(1):  # small blocks: more threads only wait for each other
         posed = pose(docket)
         bench = _bench(posed, on_progress, stop, began + docket.allowance.seconds)
-        turner = Turner(docket.allowance, began)
-        notes: list[TurnNote] = []
+        notes = _Notes(began, on_turn)
         try:
-            study = bench.first(make_mesh(posed.plan, gauges=posed.gauges.points))
+            study = _first_study(posed, bench, notes)
         except Stopped as stopped:
-            return _unfinished(posed, stopped, began, "vouch")
-        outcome = Outcome.finished.value
-        while True:
-            judgement = _judge(posed, study)
-            turn = turner.next(study, judgement, bench, found_text(judgement, posed.names))
-            notes.append(_note(turn, study, began))
-            if on_turn is not None:
-                on_turn(notes[-1])
-            if turn.todo in ("settled", "spent"):
-                break
-            try:
-                study = take(turn, study, bench)
-            except Stopped as stopped:
-                # The last whole study stands; only the turn that was under way is lost.
-                outcome = "interrupted" if stopped.why == "interrupted" else outcome
-                break
-        if not study.finished:
-            outcome = next(r.outcome.value for r in study.runs if r.outcome is not Outcome.finished)
-        return _record(posed, study, judgement, "vouch", outcome, tuple(notes), began)
+            return _unfinished(posed, stopped, notes)
+        study, judgement, outcome = _earn(posed, bench, study, notes)
+        return _record(posed, study, judgement, "vouch", outcome, notes)
+
+
+def _earn(posed: Posed, bench: Bench, study: Study, notes: "_Notes") -> tuple[Study, Judgement, str]:
+    """Judge and refine, turn after turn, until it is settled or the allowance is spent."""
+    turner = Turner(posed.docket.allowance, notes.began)
+    while True:
+        judgement = _judge(posed, study)
+        turn = turner.next(study, judgement, bench, found_text(judgement, posed.names))
+        notes.add(turn.found, turn.then, study.finest)
+        if turn.todo in ("settled", "spent"):
+            break
+        try:
+            study = take(turn, study, bench)
+        except Stopped as stopped:
+            if stopped.why == "interrupted":
+                return study, judgement, "interrupted"
+            break  # the last whole study stands; only the turn that was under way is lost
+    unfinished = [r.outcome.value for r in study.runs if r.outcome is not Outcome.finished]
+    return study, judgement, (unfinished or [study_outcome(study, posed.docket)])[0]
+
+
+def study_outcome(study: Study, docket: Docket) -> str:
+    """Return "finished", or that the allowance held no three meshes."""
+    if len(study.levels) >= 3:
+        return Outcome.finished.value
+    needed = THREE_MESHES * len(study.finest.mesh.cells)
+    return f"three meshes would need {needed} cells on the finest, the allowance is {docket.allowance.cells}"
+
+
+def _first_study(posed: Posed, bench: Bench, notes: "_Notes") -> Study:
+    """Return the first study, from a coarser first mesh where the allowance asks for it; one run alone where nothing fits.
+
+    The usual first mesh has four cells across every part, the coarser one two, so that the second has four.
+    """
+    allowance = posed.docket.allowance
+    for finer in FIRST_MESHES:
+        mesh = make_mesh(posed.plan, gauges=posed.gauges.points, finer=finer)
+        last = finer == FIRST_MESHES[-1]
+        cells = THREE_MESHES * len(mesh.cells)
+        try:
+            if cells > allowance.cells:
+                raise TooDear(f"{cells} cells")
+            left = allowance.seconds - (time.perf_counter() - notes.began)
+            return bench.first(mesh, most_seconds=np.inf if last else left)
+        except TooDear as dear:
+            then = "one run alone, without a band" if last else "begin with half as many cells across each part"
+            notes.add(
+                f"three meshes from a first one of {len(mesh.cells)} cells need {dear}: more than the allowance",
+                then,
+                None,
+            )
+    return bench.look(mesh)
 
 
 def look(docket: Docket, *, on_progress: OnProgress | None = None, stop: Stop | None = None) -> Record:
@@ -82,11 +123,12 @@ def look(docket: Docket, *, on_progress: OnProgress | None = None, stop: Stop | 
     with threadpool_limits(1):
         posed = pose(docket)
         bench = _bench(posed, on_progress, stop, began + docket.allowance.seconds)
+        notes = _Notes(began)
         try:
             study = bench.look(make_mesh(posed.plan, gauges=posed.gauges.points))
         except Stopped as stopped:
-            return _unfinished(posed, stopped, began, "quick look")
-        return _record(posed, study, _judge(posed, study), "quick look", study.finest.outcome.value, (), began)
+            return _unfinished(posed, stopped, notes, "quick look")
+        return _record(posed, study, _judge(posed, study), "quick look", study.finest.outcome.value, notes)
 
 
 def _bench(posed: Posed, on_progress: OnProgress | None, stop: Stop | None, deadline: float) -> Bench:
@@ -100,22 +142,35 @@ def _judge(posed: Posed, study: Study) -> Judgement:
     return judge(posed.docket, study, posed.problem, posed.gauges, posed.stocks, posed.names)
 
 
-def _note(turn: Turn, study: Study, began: float) -> TurnNote:
-    finest = study.finest
-    return TurnNote(turn.found, turn.then, len(finest.mesh.cells), len(finest.steps), time.perf_counter() - began)
+class _Notes:
+    """The turns as told to the user, and the clock of the whole work."""
+
+    def __init__(self, began: float, on_turn: OnTurn | None = None) -> None:
+        self.began, self._on_turn = began, on_turn
+        self.turns: list[TurnNote] = []
+
+    @property
+    def seconds(self) -> float:
+        """Return the seconds since the work began."""
+        return time.perf_counter() - self.began
+
+    def add(self, found: str, then: str, finest: Run | None) -> None:
+        """Note and tell a turn."""
+        cells, steps = (0, 0) if finest is None else (len(finest.mesh.cells), len(finest.steps))
+        self.turns.append(TurnNote(found, then, cells, steps, self.seconds))
+        if self._on_turn is not None:
+            self._on_turn(self.turns[-1])
 
 
-def _unfinished(posed: Posed, stopped: Stopped, began: float, kind: str) -> Record:
-    """Return the record of the first run that was under way: it has no band, and says how far it came."""
+def _unfinished(posed: Posed, stopped: Stopped, notes: _Notes, kind: str = "vouch") -> Record:
+    """Return the record of a first study that was stopped: the finest run that reached its end, or the one under way; no band."""
     why = "interrupted" if stopped.why == "interrupted" else "the allowance of seconds ran out in the first study"
     study = Study((stopped.partial,), (), ())
-    return _record(posed, study, _judge(posed, study), kind, why, (), began)
+    return _record(posed, study, _judge(posed, study), kind, why, notes)
 
 
-def _record(
-    posed: Posed, study: Study, judgement: Judgement, kind: str, outcome: str, notes: tuple[TurnNote, ...], began: float
-) -> Record:
-    seconds = time.perf_counter() - began
+def _record(posed: Posed, study: Study, judgement: Judgement, kind: str, outcome: str, notes: _Notes) -> Record:
     return record_of(
-        posed.docket, posed.problem, study, judgement, kind=kind, outcome=outcome, turns=notes, seconds=seconds
-    )
+        posed.docket, posed.problem, study, judgement,
+        kind=kind, outcome=outcome, turns=tuple(notes.turns), seconds=notes.seconds,
+    )  # fmt: skip

@@ -379,7 +379,7 @@ def test_unknown_region_or_edge_names_the_nearest_and_lists_them():
     assert (problem.place, problem.hint) == ('exposure "kiln", on, item 1', 'did you mean "deck"?')
     problem = only(exposures=(Exposure(name="kiln", on=("deck.bottom", "deck.tpo"), held=300.0),))
     assert problem.place == 'exposure "kiln", on, item 2'
-    assert "bottom, right, top, left, *" in problem.allowed
+    assert problem.allowed.endswith('"top", "bottom", "right", "left", "*"')
     assert '"top"' in problem.hint
     stretch = Stretch(region="dekc", start=(0, 0), end=(1, 0))
     assert '"deck"' in only(exposures=(Exposure(name="kiln", on=stretch, held=300.0),)).hint
@@ -532,6 +532,16 @@ def test_variant_changes_by_path():
     assert made.exposures[0].film.coefficient == 30.0
     assert made.clock.instants == (50.0,)
     assert (made.gauges[0].x, made.variants) == (1.0, ())
+
+
+def test_changes_by_path_keep_title_and_variants():
+    docket = make(variants=(Variant(name="warm", changes={"start.everywhere": 300.0}),))
+    other = docket.with_changes({"start.everywhere": 310.0})
+    assert other.start.everywhere == 310.0
+    assert (other.title, other.variants) == (docket.title, docket.variants)
+    assert docket.variant("warm").variants == ()
+    with pytest.raises(DocketError, match="nowhere"):
+        docket.with_changes({"nowhere.at": 1})
 
 
 def test_variant_keeps_callables():
