@@ -11,7 +11,7 @@ from typing import Annotated
 
 import typer
 
-from fem.cli_answer import BUG, EXIT_CODES, INTERRUPTED, answering
+from fem.cli_answer import BUG, INTERRUPTED, answering, ending
 from fem.cli_stock import app as stock_app
 
 app = typer.Typer(
@@ -34,32 +34,30 @@ Cells = Annotated[int | None, typer.Option(metavar="N", help="Allowance: most ce
 Seconds = Annotated[float | None, typer.Option(metavar="S", help="Allowance: longest wall time, s.")]
 
 
-@app.callback(invoke_without_command=True, epilog=EXIT_CODES)
+@app.callback(
+    invoke_without_command=True,
+    epilog=ending(
+        "check deck.docket.toml",
+        "look deck.docket.toml",
+        "vouch deck.docket.toml",
+        "export deck.docket.toml --what histories,fields --to results",
+        "stock list brick",
+    ),
+)
 def heatvouch(ctx: typer.Context) -> None:
-    r"""Temperature histories of 2D sections, each number with the band that says how far it can be trusted.
-
-    \b
-    Examples
-      heatvouch check deck.docket.toml
-      heatvouch look deck.docket.toml
-      heatvouch vouch deck.docket.toml
-      heatvouch export deck.docket.toml --what histories,fields --to results
-      heatvouch stock list brick
-    """
+    """Temperature histories of 2D sections, each number with the band that says how far it can be trusted."""
     if ctx.invoked_subcommand is None:
         typer.echo(ctx.get_help())
 
 
-@app.command(epilog=EXIT_CODES, short_help="Tell what a docket says and all that is wrong with it.")
+@app.command(
+    epilog=ending("check deck.docket.toml", 'check deck.docket.toml --variant "thicker brick"'),
+    short_help="Tell what a docket says and all that is wrong with it.",
+)
 def check(docket: DocketFile, *, variant: VariantName = None, as_json: AsJson = False) -> None:
-    r"""Read a docket, build its section, and tell what was found; nothing is solved.
+    """Read a docket, build its section, and tell what was found; nothing is solved.
 
     All problems of the docket are told at once: file, place, value, what is allowed, how to mend it.
-
-    \b
-    Examples
-      heatvouch check deck.docket.toml
-      heatvouch check deck.docket.toml --variant "thicker brick"
     """
     with answering(as_json=as_json):
         from fem.cli_check import check_docket
@@ -67,7 +65,10 @@ def check(docket: DocketFile, *, variant: VariantName = None, as_json: AsJson = 
         check_docket(docket, variant=variant, as_json=as_json)
 
 
-@app.command(epilog=EXIT_CODES, short_help="A picture in seconds, no band, no claim.")
+@app.command(
+    epilog=ending("look deck.docket.toml", "look deck.docket.toml --json > look.json"),
+    short_help="A picture in seconds, no band, no claim.",
+)
 def look(
     docket: DocketFile,
     *,
@@ -77,13 +78,7 @@ def look(
     cells: Cells = None,
     seconds: Seconds = None,
 ) -> None:
-    r"""Take a quick look: one run on one mesh. It has no band and claims nothing.
-
-    \b
-    Examples
-      heatvouch look deck.docket.toml
-      heatvouch look deck.docket.toml --json > look.json
-    """
+    """Take a quick look: one run on one mesh. It has no band and claims nothing."""
     with answering(as_json=as_json):
         from fem.cli_run import QUICK, asked_for, run
 
@@ -91,7 +86,14 @@ def look(
         raise typer.Exit(run(asked, QUICK))
 
 
-@app.command(epilog=EXIT_CODES, short_help="Numbers with bands, verdicts on limits, a standing.")
+@app.command(
+    epilog=ending(
+        "vouch deck.docket.toml",
+        'vouch deck.docket.toml --band "0.5 K" --seconds 300',
+        'vouch deck.docket.toml --variant "thicker brick" --json > brick.json',
+    ),
+    short_help="Numbers with bands, verdicts on limits, a standing.",
+)
 def vouch(
     docket: DocketFile,
     *,
@@ -102,17 +104,11 @@ def vouch(
     cells: Cells = None,
     seconds: Seconds = None,
 ) -> None:
-    r"""Earn the docket's numbers: a band on each, a verdict on each limit, a standing.
+    """Earn the docket's numbers: a band on each, a verdict on each limit, a standing.
 
     It goes on until the bands settle what was asked or the allowance is spent, and tells at each turn what it
     found. The record is kept beside the docket in NAME.records; a docket that has not changed is not run again.
     Ctrl-C keeps what was earned so far; a second one aborts at once.
-
-    \b
-    Examples
-      heatvouch vouch deck.docket.toml
-      heatvouch vouch deck.docket.toml --band "0.5 K" --seconds 300
-      heatvouch vouch deck.docket.toml --variant "thicker brick" --json > brick.json
     """
     with answering(as_json=as_json):
         from fem.cli_run import VOUCH, asked_for, run
@@ -123,7 +119,14 @@ def vouch(
         raise typer.Exit(run(asked, VOUCH))
 
 
-@app.command(epilog=EXIT_CODES, short_help="Write a record as CSV, VTU, MSH or JSON; pack a docket.")
+@app.command(
+    epilog=ending(
+        "export deck.docket.toml --to results",
+        "export deck.docket.toml --what fields,mesh --to results",
+        "export deck.docket.toml --what docket --to parcel",
+    ),
+    short_help="Write a record as CSV, VTU, MSH or JSON; pack a docket.",
+)
 def export(
     docket: DocketFile,
     *,
@@ -137,16 +140,10 @@ def export(
     ] = None,
     as_json: AsJson = False,
 ) -> None:
-    r"""Write a record in open formats: CSV, VTU with PVD, MSH, JSON; or the docket packed with its logs.
+    """Write a record in open formats: CSV, VTU with PVD, MSH, JSON; or the docket packed with its logs.
 
     The record is the vouch on the docket's shelf, or its quick look where there is no vouch. One of a run with
     --band, --cells or --seconds is named with --record.
-
-    \b
-    Examples
-      heatvouch export deck.docket.toml --to results
-      heatvouch export deck.docket.toml --what fields,mesh --to results
-      heatvouch export deck.docket.toml --what docket --to parcel
     """
     with answering(as_json=as_json):
         from fem.cli_export import export_docket
@@ -155,7 +152,12 @@ def export(
 
 
 def main() -> None:
-    """Run the command line; a fault of ours keeps its trace and has an exit code of its own."""
+    """Run the command line; a fault of ours keeps its trace and has an exit code of its own.
+
+    Where the reader of the output has left (``| head``), the program ends quietly by the system's own signal.
+    """
+    if hasattr(signal, "SIGPIPE"):  # not on every system
+        signal.signal(signal.SIGPIPE, signal.SIG_DFL)
     try:
         app()
     except SystemExit as ended:

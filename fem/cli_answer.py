@@ -22,12 +22,22 @@ BUG = 70
 
 EXIT_CODES = """\b
 Exit codes
-   0  vouched; check, look, export, stock: done
+   0  vouched, also where a limit is vouched to be not met: read the verdict
+      in the table or in --json; check, look, export, stock: done
    1  open (the reasons are told); look: the work did not finish
    2  bad input, or a file or folder that cannot be read or written
    3  interrupted by Ctrl-C
-  70  a fault of this program, with its trace"""
+  70  a fault of this program, with its trace
+ 141  what the shell says where the reader of the output (head) left early"""
 
+
+def ending(*examples: str) -> str:
+    """Return what stands at the end of a command's help: its examples, one a line, and the exit codes."""
+    return "\n".join(("\b", "Examples", *(f"  heatvouch {example}" for example in examples))) + f"\n\n{EXIT_CODES}"
+
+
+AS_IT_IS: dict[str, Any] = {"markup": False, "emoji": False, "highlight": False}
+"""Of every console: names and titles are the user's own, and nothing in them is an instruction to the screen."""
 PIPE_WIDTH = 120
 """Characters a line where the output is no terminal and COLUMNS does not say."""
 
@@ -47,17 +57,17 @@ def _console(*, error: bool) -> "Console":
 
     terminal = (sys.stderr if error else sys.stdout).isatty()
     width = None if terminal or "COLUMNS" in os.environ else PIPE_WIDTH
-    return Console(stderr=error, width=width)
+    return Console(stderr=error, width=width, **AS_IT_IS)
 
 
 def say(text: str) -> None:
     """Print one message on the error stream, as it is."""
-    err().print(text, markup=False, highlight=False, soft_wrap=True)
+    err().print(text, soft_wrap=True)
 
 
 def tell(text: str) -> None:
     """Print one line on the output, as it is."""
-    out().print(text, markup=False, highlight=False, soft_wrap=True)
+    out().print(text, soft_wrap=True)
 
 
 def put_json(content: dict[str, Any]) -> None:
@@ -95,8 +105,7 @@ def _tell_problems(problems: "tuple[Problem, ...]") -> None:
     for number, problem in enumerate(problems, start=1):
         where = ": ".join(part for part in (problem.file, problem.place) if part)
         say(f"\n{number}. {where}")
-        spot = "" if problem.xy is None else f"x = {problem.xy[0]:.6g} m, y = {problem.xy[1]:.6g} m"
-        rows = (("found", problem.value), ("at", spot), ("allowed", problem.allowed), ("to mend", problem.hint))
+        rows = (("found", problem.value), ("at", problem.at), ("allowed", problem.allowed), ("to mend", problem.hint))
         for name, text in rows:
             if text:
                 say(f"   {name:8} {text}")

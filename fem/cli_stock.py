@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from fem.cli_answer import EXIT_CODES, answering, out, put_json, say, tell
+from fem.cli_answer import answering, ending, out, put_json, say, tell
 
 if TYPE_CHECKING:
     from fem.stock import Stock
@@ -16,33 +16,25 @@ AsJson = Annotated[bool, typer.Option("--json", help="Print JSON on the output."
 Name = Annotated[str, typer.Argument(metavar="NAME", help="The stock's name, in quotes if it has blanks.")]
 
 
-@app.callback(invoke_without_command=True)
+@app.callback(
+    invoke_without_command=True,
+    epilog=ending(
+        "stock list insulating brick", 'stock show "fireclay brick"', 'stock plot "fireclay brick" --to fireclay.png'
+    ),
+)
 def stock(ctx: typer.Context) -> None:
-    r"""List, show and plot the library's materials.
-
-    \b
-    Examples
-      heatvouch stock list insulating brick
-      heatvouch stock show "fireclay brick"
-      heatvouch stock plot "fireclay brick" --to fireclay.png
-    """
+    """List, show and plot the library's materials."""
     if ctx.invoked_subcommand is None:
         typer.echo(ctx.get_help())
 
 
-@app.command("list", epilog=EXIT_CODES)
+@app.command("list", epilog=ending("stock list", "stock list insulating brick"))
 def list_stock(
     search: Annotated[str, typer.Argument(metavar="[SEARCH]", help="Words that its name or family must hold.")] = "",
     *,
     as_json: AsJson = False,
 ) -> None:
-    r"""List the stocks of the library.
-
-    \b
-    Examples
-      heatvouch stock list
-      heatvouch stock list insulating brick
-    """
+    """List the stocks of the library."""
     with answering(as_json=as_json):
         from fem.cli_stock_tables import listing, listing_table
         from fem.stock import find, library
@@ -56,14 +48,9 @@ def list_stock(
             say(f'no stock of the library holds "{search}"; without a search word all are listed')
 
 
-@app.command("show", epilog=EXIT_CODES)
+@app.command("show", epilog=ending('stock show "fireclay brick"'))
 def show_stock(name: Name, *, as_json: AsJson = False) -> None:
-    r"""Show a stock: its values over temperature, where they hold, and where each comes from.
-
-    \b
-    Examples
-      heatvouch stock show "fireclay brick"
-    """
+    """Show a stock: its values over temperature, where they hold, and where each comes from."""
     with answering(as_json=as_json):
         from fem.cli_stock_tables import listing, show
 
@@ -74,18 +61,13 @@ def show_stock(name: Name, *, as_json: AsJson = False) -> None:
             show(out(), stock)
 
 
-@app.command("plot", epilog=EXIT_CODES)
+@app.command("plot", epilog=ending('stock plot "fireclay brick" --to fireclay.png'))
 def plot(
     name: Name,
     *,
     to: Annotated[Path, typer.Option(metavar="FILE.png", help="The picture; one that is there is replaced.")],
 ) -> None:
-    r"""Plot a stock's properties over temperature, with their sources, into a PNG file.
-
-    \b
-    Examples
-      heatvouch stock plot "fireclay brick" --to fireclay.png
-    """
+    """Plot a stock's properties over temperature, with their sources, into a PNG file."""
     with answering(as_json=False):
         from fem.errors import DocketError, StoreError
         from fem.stock_plot import plot_stock

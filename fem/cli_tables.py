@@ -12,7 +12,7 @@ from rich.text import Text
 
 from fem.cautions import RESPONSIBILITY, cautions
 from fem.history import Key
-from fem.numbers import Writer, peak_text
+from fem.numbers import START, Writer, peak_text
 from fem.record import Record
 from fem.verdicts import Call, Verdict
 
@@ -30,7 +30,7 @@ def show_record(console: Console, record: Record) -> None:
 def _parts(record: Record) -> list[RenderableType]:
     writer = Writer.of(record)
     tables = (gauges, regions, limits, ledger, findings)
-    parts = [_head(record), *(table(record, writer) for table in tables), standing(record)]
+    parts = [_head(record), *(table(record, writer) for table in tables), standing(record, writer)]
     return [part for part in parts if part is not None]
 
 
@@ -104,12 +104,9 @@ def _last_column(record: Record) -> str:
 
 
 def _extreme(record: Record, writer: Writer, key: Key, *, lowest: bool) -> Text:
-    peak = record.figures.peak(key, lowest=lowest)
-    value, when = peak_text(writer, peak)
+    value, when = peak_text(writer, record.figures, key, lowest=lowest)
     place = ""
-    if (
-        key.kind in ("highest", "lowest") and peak.t > record.figures.grid.t[0]
-    ):  # at the start, all of a region is alike
+    if key.kind in ("highest", "lowest") and not when.startswith(START):  # at the start, all of a region is alike
         place = f"\n{writer.place(*record.spot(key.name, lowest=lowest))}"
     return Text.assemble(value, (f"\nat {when}{place}", "dim"))
 
@@ -162,10 +159,12 @@ def bands_text(verdict: Verdict) -> str:
 def _when(record: Record, writer: Writer, verdict: Verdict) -> str:
     if record.steady:
         return ""
+    clock = (float(record.figures.grid.t[0]), float(record.figures.grid.t[-1]))
     if verdict.crossing is None:
-        return f"tightest at {writer.time(verdict.t)}"
+        return f"tightest at {writer.instant(verdict.t, clock)}" if math.isfinite(verdict.margin) else ""
     if not math.isfinite(verdict.band):
-        return f"reached at {writer.time(verdict.crossing[0])}" if math.isfinite(verdict.crossing[0]) else "not reached"
+        reached = verdict.crossing[0]
+        return f"reached at {writer.instant(reached, clock)}" if math.isfinite(reached) else "not reached"
     text = writer.crossing(*verdict.crossing)
     return text if text.startswith("not") else f"reached at {text}"
 
@@ -185,7 +184,8 @@ def ledger(record: Record, writer: Writer) -> RenderableType:
         if len(edges) > 1:
             table.add_row(f"in through {name}, all its edges", _amount(record, writer, Key(kind, name), None))
         for edge, heat in edges:
-            words = f"  of it{edge.removeprefix(name)}" if len(edges) > 1 else f"in through {edge}"
+            told = writer.words(edge)
+            words = f"  of it{told.removeprefix(name)}" if len(edges) > 1 else f"in through {told}"
             whole = Key(kind, name if len(edges) == 1 else edge)
             table.add_row(words, _amount(record, writer, whole, heat))
     for name, heat in book.made:
@@ -213,7 +213,7 @@ def findings(record: Record, writer: Writer) -> RenderableType | None:
         return None
     table = plain_table("check", "", "what was found", wrapped=("what was found",))
     for finding in sorted(record.findings, key=lambda found: not found.blocks):
-        told = Text(finding.message)
+        told = Text(writer.words(finding.message))
         if (
             finding.x is not None
             and finding.y is not None
@@ -221,27 +221,27 @@ def findings(record: Record, writer: Writer) -> RenderableType | None:
         ):
             told.append(f" — at {writer.place(finding.x, finding.y)}")
         if finding.close:
-            told.append(f"\nto close it: {finding.close}", style="dim")
+            told.append(f"\nto close it: {writer.words(finding.close)}", style="dim")
         weight = Text("keeps it open", style="red") if finding.blocks else Text("remark", style="dim")
         table.add_row(finding.check, weight, told)
     return under("Findings", table)
 
 
-def standing(record: Record) -> RenderableType:
+def standing(record: Record, writer: Writer) -> RenderableType:
     """Return the standing with its reasons and what would close each."""
     style = "bold green" if record.standing == "vouched" else "bold yellow"
     lines: list[RenderableType] = ["", Text.assemble(("Standing: ", "bold"), (record.standing, style))]
     for number, reason in enumerate(record.reasons, start=1):
-        told = Text(f"{number}. {reason.text}")
+        told = Text(writer.words(f"{number}. {reason.text}"))
         if reason.close:
-            told.append(f"\n   to close it: {reason.close}", style="dim")
+            told.append(f"\n   to close it: {writer.words(reason.close)}", style="dim")
         lines.append(Padding(told, (0, 0, 0, 2)))
     return Group(*lines)
 
 
 def show_end(console: Console, record: Record, where: str) -> None:
     """Print where the record lies, who answers for its use, and the cautions that the job calls for."""
-    console.print(f"\nRecord: {where}", markup=False, highlight=False, soft_wrap=True)
-    console.print(RESPONSIBILITY, markup=False, highlight=False)
+    console.print(Text(f"\nRecord: {where}"), soft_wrap=True)
+    console.print(Text(RESPONSIBILITY))
     for caution in cautions(record):
-        console.print(caution, style="yellow", markup=False, highlight=False)
+        console.print(Text(caution, style="yellow"))

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any, Self
 
 from rich.console import Console
 from rich.progress import BarColumn, Progress, TaskID, TaskProgressColumn, TextColumn
+from rich.text import Text
 
 from fem.record import TurnNote
 
@@ -44,7 +45,7 @@ class Watch:
         if threading.current_thread() is threading.main_thread():
             self._before = signal.signal(signal.SIGINT, self._interrupt)
         if self.console.is_terminal:
-            columns = (TextColumn("{task.description}"), BarColumn(bar_width=30), TaskProgressColumn())
+            columns = (TextColumn("{task.description}", markup=False), BarColumn(bar_width=30), TaskProgressColumn())
             self._bar = Progress(*columns, TextColumn("{task.fields[left]}"), console=self.console, transient=True)
             self._task = self._bar.add_task("section and mesh", total=1.0, left="")
             self._bar.start()
@@ -89,7 +90,7 @@ class Watch:
         self._say(f"  next:  {note.then}")
 
     def _say(self, text: str) -> None:
-        self.console.print(text, markup=False, highlight=False, soft_wrap=True)
+        self.console.print(Text(text), soft_wrap=True)
 
 
 def time_left(seconds: float | None) -> str:

@@ -223,9 +223,7 @@ class Docket(Strict):
         title = f"{self.title} — {name}".strip(" —")[:LONGEST_TITLE]
         return self.with_changes(found[0].changes, title=title, variants=False)
 
-    def with_changes(
-        self, changes: Mapping[str, Any], *, title: str | None = None, variants: bool = True
-    ) -> "Docket":
+    def with_changes(self, changes: Mapping[str, Any], *, title: str | None = None, variants: bool = True) -> "Docket":
         """Return the docket with the values at some paths changed.
 
         Parameters
@@ -269,7 +267,7 @@ def _validate(docket: Docket, data: dict[str, Any], context: Reading) -> None:
         validate(data, self_instance=docket, context=context)
     except ValidationError as error:
         faults = error.errors(include_url=False)
-        meant, strangers = _as_meant(data)
+        meant, strangers = as_meant(data)
         if strangers:  # the rest is judged as it was meant, so that one misspelt key is one fault
             faults = [line for line in faults if line["loc"] in strangers]
             try:
@@ -281,7 +279,7 @@ def _validate(docket: Docket, data: dict[str, Any], context: Reading) -> None:
         raise docket_error(faults, linked, shaped) from None
 
 
-def _as_meant(data: dict[str, Any]) -> tuple[dict[str, Any], list[tuple[str, ...]]]:
+def as_meant(data: dict[str, Any]) -> tuple[dict[str, Any], list[tuple[str, ...]]]:
     """Return the docket with its unknown keys read as the nearest that is missing, and the places of these keys."""
     meant = dict(data)
     strangers = [key for key in data if key not in (*FILE_KEYS, *Docket.model_fields)]

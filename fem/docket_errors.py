@@ -26,7 +26,8 @@ def docket_error(faults: Iterable[Any], linked: Iterable[InitErrorDetails], data
         What was read, for the names of the parts.
     """
     problems = [
-        _problem(line["loc"], line["type"], line["msg"], line.get("ctx", {}), line["input"], data) for line in _each_log_once(faults)
+        _problem(line["loc"], line["type"], line["msg"], line.get("ctx", {}), line["input"], data)
+        for line in _each_log_once(faults)
     ]
     for line in linked:
         kind = line["type"]

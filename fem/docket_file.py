@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from fem.atomic import whole_file
-from fem.docket import Docket
+from fem.docket import Docket, as_meant
 from fem.docket_form import FORMAT, changed
 from fem.docket_text import merged, new_text
 from fem.docket_zip import MAX_TEXT, SUFFIX, open_zip, zip_bytes
@@ -82,7 +82,7 @@ def read_text(text: str, *, logs: LogFolder, file: str = "") -> Docket:
         try:
             docket = Docket.read({**data, "title": title, "units": units}, Reading(units=units, logs=logs))
         except DocketError as error:
-            raise DocketError(dict.fromkeys((*problems, *error.problems, *_lost_paths(data)))) from None
+            raise DocketError(dict.fromkeys((*problems, *error.problems, *_lost_paths(as_meant(data)[0])))) from None
         if problems:
             raise DocketError(problems)
     except DocketError as error:

@@ -196,7 +196,9 @@ def _change(form: Form, path: str, value: Any) -> None:
                 return
             known = [str(_label(item)) for item in here] if isinstance(here, list) else _keys(here)
             what = f'below "{".".join(words[:done])}":' if done else "the tables"
-            allowed, hint = (unknown if isinstance(here, list) else unknown_key)(what=what, word=words[done], known=known)
+            allowed, hint = (unknown if isinstance(here, list) else unknown_key)(
+                what=what, word=words[done], known=known
+            )
             raise DocketError.single(path, shown(value), allowed, hint)
         key, count = step
         done += count

@@ -28,6 +28,8 @@ class Problem:
         The file it was found in; empty for a docket made in Python.
     xy : (float, float) or None
         The spot on the section, m, where there is one.
+    spot : str
+        The same in the docket's units, once these are known.
     """
 
     place: str
@@ -36,12 +38,18 @@ class Problem:
     hint: str
     file: str = ""
     xy: tuple[float, float] | None = None
+    spot: str = ""
+
+    @property
+    def at(self) -> str:
+        """Return the spot in words, in metres where the docket's units are not known; empty where there is none."""
+        return self.spot or ("" if self.xy is None else f"x = {self.xy[0]:.6g} m, y = {self.xy[1]:.6g} m")
 
     def __str__(self) -> str:
         """Return one readable paragraph."""
         where = ": ".join(part for part in (self.file, self.place) if part)
         found = f" {self.value} is refused." if self.value else ""
-        spot = "" if self.xy is None else f" At x = {self.xy[0]:.6g} m, y = {self.xy[1]:.6g} m."
+        spot = f" At {self.at}." if self.at else ""
         return f"{where}:{found} Allowed: {_ended(self.allowed)} To mend: {_ended(self.hint)}{spot}"
 
 

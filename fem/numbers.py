@@ -1,14 +1,15 @@
 """Numbers for people: in the docket's units, rounded to what the band supports, never without it."""
 
 import math
+import re
 from dataclasses import dataclass
 from decimal import ROUND_CEILING, ROUND_FLOOR, ROUND_HALF_EVEN, Context, Decimal
 from typing import Any, Self
 
-from fem.figures import Peak
+from fem.figures import Figures
 from fem.history import Key
 from fem.record import Record
-from fem.units import FileUnits, scale_of
+from fem.units import FileUnits, said_place, scale_of
 
 BAND_DIGITS = 2
 """Significant digits of a written band: JCGM 100:2008 (GUM) 7.2.6, which also allows to round it up."""
@@ -25,6 +26,12 @@ PREFIXES = ((1.0, ""), (1e3, "k"), (1e6, "M"), (1e9, "G"), (1e12, "T"))
 EXACT = Context(prec=60)
 SAME_INSTANT = 1e-9
 """Relative width below which a span of time is one instant."""
+CLOCK_DIGITS = 4
+"""An instant without a band is written to this many digits of the clock's length: it is a step of one run."""
+START = "the start"
+NUMBER = r"-?[0-9.]+(?:e[+-]?[0-9]+)?"
+STRETCH = re.compile(rf"stretch:([^:]+):({NUMBER}),({NUMBER}):({NUMBER}),({NUMBER})")
+"""The label of `fem.section.stretch_label`: region, start and end, m."""
 GRACE = Decimal("1e-6")
 """Part of the last digit by which a band may be rounded down: what binary floats leave of a decimal."""
 
@@ -213,6 +220,28 @@ class Writer:
         text, start, end = span(*(float(scale.out(x)) for x in (middle, low, high)))
         return f"{text} ({start} to {end}) {scale.unit}"
 
+    def instant(self, seconds: float, clock: tuple[float, float]) -> str:
+        """Return an instant without a band, rounded to what the clock [s, from and to] makes worth telling."""
+        begin, end = (float(self.scale("time").out(t)) for t in clock)
+        places = max(CLOCK_DIGITS - 1 - math.floor(math.log10(end - begin)), 0)
+        t = round(float(self.scale("time").out(seconds)), places)
+        return START if t <= round(begin, places) else f"{t:.{places}f} {self.scale('time').unit}"
+
+    def words(self, text: str) -> str:
+        """Return a text with the labels of stretches in it written for people.
+
+        Examples
+        --------
+        >>> Writer(FileUnits("mm", "min", "degC")).words("kiln on stretch:brick:0.5,0.06:0.5,0.114")
+        'kiln on brick, (500, 60) mm to (500, 114) mm'
+        """
+
+        def written(label: re.Match[str]) -> str:
+            x0, y0, x1, y1 = map(float, label.groups()[1:])
+            return f"{label[1]}, {said_place(x0, y0, self.units)} to {said_place(x1, y1, self.units)}"
+
+        return STRETCH.sub(written, text)
+
     def crossing(self, middle: float, low: float, high: float) -> str:
         """Return when a temperature is reached, the earliest and the latest; infinite means not within the clock."""
         if math.isfinite(middle) and math.isfinite(low) and math.isfinite(high):
@@ -276,11 +305,20 @@ def series_text(key: Key) -> str:
     return SERIES[key.kind].format(key.name or "the section")
 
 
-def peak_text(writer: Writer, peak: Peak) -> tuple[str, str]:
-    """Return a highest or lowest temperature and its instant as text; without a band the instant has no range."""
+def peak_text(writer: Writer, figures: Figures, key: Key, *, lowest: bool) -> tuple[str, str]:
+    """Return a highest or lowest temperature and its instant as text; without a band the instant has no range.
+
+    Where the band cannot tell the extreme from the start, the instant is the start, with how late it may be.
+    """
+    peak, begin, end = figures.peak(key, lowest=lowest), float(figures.grid.t[0]), float(figures.grid.t[-1])
     value = writer.value("temperature", peak.value, peak.band)
-    when = writer.time_span(peak.t, peak.t_low, peak.t_high) if math.isfinite(peak.band) else writer.time(peak.t)
-    return value, when
+    if not math.isfinite(peak.band):
+        return value, writer.instant(peak.t, (begin, end)) if end > begin else START
+    first = float(figures.series(key)[0][0])
+    if peak.t_low <= begin and abs(first - peak.value) <= peak.band:
+        late = peak.t_high - begin > SAME_INSTANT * (end - begin)
+        return value, f"{START} (or up to {writer.instant(peak.t_high, (begin, end))})" if late else START
+    return value, writer.time_span(peak.t, peak.t_low, peak.t_high)
 
 
 def _prefix(kind: str, value: float, band: float) -> tuple[str, float]:

@@ -8,11 +8,14 @@ from fem.edge import crossings
 from fem.errors import Problem
 from fem.outline import Outline
 from fem.partition import SAME_POINT, near_pairs
+from fem.units import SI, FileUnits, said, said_place
 
 AXIS = "a body of revolution has x = r, the distance from its axis: r >= 0"
 
 
-def check_outlines(outlines: Sequence[Outline], size: float, *, revolution: bool) -> list[Problem]:
+def check_outlines(
+    outlines: Sequence[Outline], size: float, *, revolution: bool, units: FileUnits = SI
+) -> list[Problem]:
     """Return every fault of the outlines by themselves.
 
     Parameters
@@ -22,15 +25,17 @@ def check_outlines(outlines: Sequence[Outline], size: float, *, revolution: bool
         Of the section, m: it says which points are the same.
     revolution : bool
         Then x is a radius.
+    units : FileUnits
+        Of the lengths in messages.
     """
     found = _names(outlines)
     for outline in outlines:
-        faults = _vertices(outline, SAME_POINT * size)
+        faults = _vertices(outline, SAME_POINT * size, units)
         if not faults:
             faults = _crossings(outline, SAME_POINT * size)
         found += faults
         if revolution:
-            found += _behind_axis(outline, SAME_POINT * size)
+            found += _behind_axis(outline, SAME_POINT * size, units)
     return found
 
 
@@ -61,7 +66,7 @@ def _xy(z: complex) -> tuple[float, float]:
     return float(z.real), float(z.imag)
 
 
-def _vertices(outline: Outline, tolerance: float) -> list[Problem]:
+def _vertices(outline: Outline, tolerance: float, units: FileUnits) -> list[Problem]:
     n, found = len(outline.vertices), []
     if not np.isfinite(np.array(outline.vertices, dtype=np.float64)).all():
         return [
@@ -91,7 +96,7 @@ def _vertices(outline: Outline, tolerance: float) -> list[Problem]:
                 Problem(outline.place(i), "an edge of no length", "two ends that are apart", hint, xy=_xy(start))
             )
         elif edge.via is not None and outline.made(i) is None:
-            value = f"via point ({edge.via[0]:.6g}, {edge.via[1]:.6g})"
+            value = f"via point {said_place(*edge.via, units)}"
             hint = "move the point off the straight line, or take it away for a straight edge"
             found.append(
                 Problem(outline.place(i), value, "a point that lies off the line through both ends", hint, xy=edge.via)
@@ -128,12 +133,14 @@ def _crossing(outline: Outline, how: str, which: tuple[int, int], z: complex) ->
     )
 
 
-def _behind_axis(outline: Outline, tolerance: float) -> list[Problem]:
+def _behind_axis(outline: Outline, tolerance: float, units: FileUnits) -> list[Problem]:
     found = []
     for i, (x, y) in enumerate(outline.vertices):
         if x < -tolerance:
             hint = "move the vertex to r >= 0, or mirror the section"
-            found.append(Problem(f"{outline.place()}, vertex {i + 1}", f"r = {x:.6g} m", AXIS, hint, xy=(x, y)))
+            found.append(
+                Problem(f"{outline.place()}, vertex {i + 1}", f"r = {said(x, 'length', units)}", AXIS, hint, xy=(x, y))
+            )
     for i in range(len(outline.edges)):
         edge = outline.made(i)
         if edge is None or edge.centre is None or min(edge.start.real, edge.end.real) < -tolerance:
@@ -141,9 +148,6 @@ def _behind_axis(outline: Outline, tolerance: float) -> list[Problem]:
         leftmost = edge.centre - edge.radius
         if leftmost.real < -tolerance and edge.distance(np.array([leftmost]))[0] <= tolerance:
             hint = "flatten the arc or move it to r >= 0"
-            found.append(
-                Problem(
-                    outline.place(i), f"an arc that reaches r = {leftmost.real:.6g} m", AXIS, hint, xy=_xy(leftmost)
-                )
-            )
+            value = f"an arc that reaches r = {said(float(leftmost.real), 'length', units)}"
+            found.append(Problem(outline.place(i), value, AXIS, hint, xy=_xy(leftmost)))
     return found

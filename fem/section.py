@@ -7,6 +7,7 @@
 """
 
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
@@ -21,6 +22,7 @@ from fem.plan import Curve, Face, Kind, Plan
 from fem.section_checks import check_partition, closed_notes, loops_of, narrow_spots, point_contacts, thin_voids
 from fem.snap import close
 from fem.stretches import OutlineStretch, check_stretches, covers, placed
+from fem.units import SI, FileUnits, said_place
 
 GAP_TOLERANCE = 1e-4
 """Default gap tolerance as a part of the section's size (diagonal of its box); common practice, no source."""
@@ -47,6 +49,7 @@ def build_plan(
     gap_tolerance: float | None = None,
     close_gaps: bool = False,
     stretches: Sequence[OutlineStretch] = (),
+    units: FileUnits = SI,
 ) -> Plan:
     """Return the plan of outlines of which later ones cut earlier ones.
 
@@ -61,6 +64,8 @@ def build_plan(
         Close gaps that are narrower than the tolerance, with a note each, instead of refusing them.
     stretches : sequence of OutlineStretch
         Curves get their labels, and are split where they end.
+    units : FileUnits
+        In which faults and notes speak of lengths and places.
 
     Raises
     ------
@@ -68,21 +73,24 @@ def build_plan(
         With every fault found, each with its place.
     """
     revolution = kind == "revolution"
-    _refuse(check_outlines(outlines, _rough_size(outlines), revolution=revolution))
+    _refuse(check_outlines(outlines, _rough_size(outlines), revolution=revolution, units=units))
     size = extent(outlines)
     tolerance = GAP_TOLERANCE * size if gap_tolerance is None else gap_tolerance
-    _refuse(thin_voids(outlines, size, tolerance) + check_stretches(outlines, stretches, SAME_POINT * size))
+    stray = check_stretches(outlines, stretches, SAME_POINT * size, units)
+    _refuse(thin_voids(outlines, size, tolerance, units) + stray)
     drawing = _Drawing(outlines, stretches, size)
     thin, gaps = narrow_spots(drawing.links, drawing.nodes, drawing.nested, tolerance)
     notes: list[str] = []
     if close_gaps and gaps:
-        notes = closed_notes(outlines, drawing.links, gaps)
+        notes = closed_notes(outlines, drawing.links, gaps, units)
         outlines = close(outlines, tolerance)
-        _refuse(check_outlines(outlines, size, revolution=revolution))
+        _refuse(check_outlines(outlines, size, revolution=revolution, units=units))
         drawing = _Drawing(outlines, stretches, size)
         thin, gaps = narrow_spots(drawing.links, drawing.nodes, drawing.nested, tolerance)
-    _refuse(check_partition(outlines, drawing.links, drawing.nested, thin + gaps, tolerance, tried=close_gaps))
-    notes += point_contacts(outlines, drawing.links, drawing.nodes)
+    spots = thin + gaps
+    faults = check_partition(outlines, drawing.links, drawing.nested, spots, tolerance, tried=close_gaps, units=units)
+    _refuse(faults)
+    notes += point_contacts(outlines, drawing.links, drawing.nodes, units)
     return drawing.plan(kind, tuple(notes), tolerance)
 
 
@@ -107,13 +115,17 @@ def plan_of(docket: Docket) -> Plan:
     stretches = {
         stretch_label(ref): ref for exposure in docket.exposures for ref in exposure.on if isinstance(ref, Stretch)
     }
-    return build_plan(
-        outlines,
-        kind=section.kind,
-        gap_tolerance=section.gap_tolerance,
-        close_gaps=section.close_gaps,
-        stretches=[OutlineStretch(ref.region, ref.start, ref.end, label) for label, ref in stretches.items()],
-    )
+    try:
+        return build_plan(
+            outlines,
+            kind=section.kind,
+            gap_tolerance=section.gap_tolerance,
+            close_gaps=section.close_gaps,
+            stretches=[OutlineStretch(ref.region, ref.start, ref.end, label) for label, ref in stretches.items()],
+            units=docket.units,
+        )
+    except SectionError as error:
+        raise SectionError(_spotted(fault, docket.units) for fault in error.problems) from None
 
 
 def stretch_label(stretch: Stretch) -> str:
@@ -125,6 +137,10 @@ def stretch_label(stretch: Stretch) -> str:
 def _refuse(faults: list[Problem]) -> None:
     if faults:
         raise SectionError(faults)
+
+
+def _spotted(fault: Problem, units: FileUnits) -> Problem:
+    return fault if fault.xy is None else replace(fault, spot=said_place(*fault.xy, units))
 
 
 def _rough_size(outlines: Sequence[Outline]) -> float:

@@ -8,6 +8,7 @@ from fem.faces import Loop, nest, sectors, walk
 from fem.narrow import Shapes, Spot
 from fem.outline import Outline
 from fem.partition import NOBODY, Link, divide
+from fem.units import SI, FileUnits, in_unit, said_place
 
 Nested = Sequence[tuple[Loop, list[Loop]]]
 
@@ -31,14 +32,14 @@ def loops_of(links: Sequence[Link], nodes: Complexes) -> list[Loop]:
         ) from None
 
 
-def thin_voids(outlines: Sequence[Outline], size: float, tolerance: float) -> list[Problem]:
-    """Return the voids that are hair-thin somewhere."""
+def thin_voids(outlines: Sequence[Outline], size: float, tolerance: float, units: FileUnits = SI) -> list[Problem]:
+    """Return the voids that are hair-thin somewhere; messages in the units."""
     found = []
     for outline in outlines:
         if not outline.solid:
             nodes, links = divide([outline], [], size)
             shapes = Shapes(links, nodes, nest(loops_of(links, nodes)), tolerance)
-            found += [_thin([outline], links, spot, tolerance) for spot in shapes.thin()]
+            found += [_thin([outline], links, spot, tolerance, units) for spot in shapes.thin()]
     return found
 
 
@@ -50,6 +51,7 @@ def check_partition(
     tolerance: float,
     *,
     tried: bool,
+    units: FileUnits = SI,
 ) -> list[Problem]:
     """Return every fault of the outlines together.
 
@@ -63,13 +65,15 @@ def check_partition(
         Gap tolerance, m.
     tried : bool
         Whether closing the gaps was tried.
+    units : FileUnits
+        Of the lengths in messages.
     """
     found = _covered(outlines, nested)
     for spot in spots:
         found.append(
-            _gap(outlines, links, spot, tolerance, tried=tried)
+            _gap(outlines, links, spot, tolerance, units, tried=tried)
             if spot.owner == NOBODY
-            else _thin(outlines, links, spot, tolerance)
+            else _thin(outlines, links, spot, tolerance, units)
         )
     return found
 
@@ -98,14 +102,21 @@ def _xy(z: complex) -> tuple[float, float]:
     return float(z.real), float(z.imag)
 
 
-def _thin(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot, tolerance: float) -> Problem:
+def _thin(
+    outlines: Sequence[Outline], links: Sequence[Link], spot: Spot, tolerance: float, units: FileUnits
+) -> Problem:
     outline = outlines[spot.owner]
     between = " and ".join(dict.fromkeys(edge_place(outlines, links[i], of=spot.owner) for i in spot.links))
-    allowed = f"parts wider than the gap tolerance of {tolerance:.3g} m"
+    allowed = f"parts wider than the gap tolerance of {_width(tolerance, units)}"
     hint = "widen the part, or move the edges onto each other; if it is meant, lower gap_tolerance"
-    return Problem(
-        f"{outline.place()}, between {between}", f"a width of {spot.width:.3g} m", allowed, hint, xy=_xy(spot.z)
-    )
+    value = f"a width of {_width(spot.width, units)}"
+    return Problem(f"{outline.place()}, between {between}", value, allowed, hint, xy=_xy(spot.z))
+
+
+def _width(metres: float, units: FileUnits) -> str:
+    """Return a width for a message: three digits, which is what a gap is known to."""
+    unit = units.of("length")
+    return f"{in_unit(metres, unit, 'length'):.3g} {unit}"
 
 
 def gap_sides(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot) -> str:
@@ -114,27 +125,39 @@ def gap_sides(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot) ->
     return " and ".join(dict.fromkeys(sides))
 
 
-def _gap(outlines: Sequence[Outline], links: Sequence[Link], spot: Spot, tolerance: float, *, tried: bool) -> Problem:
+def _gap(
+    outlines: Sequence[Outline],
+    links: Sequence[Link],
+    spot: Spot,
+    tolerance: float,
+    units: FileUnits,
+    *,
+    tried: bool,
+) -> Problem:
     hint = "draw the edges onto each other; if the gap is meant, lower gap_tolerance"
     if tried:
-        value = f"a gap of {spot.width:.3g} m, which moving points onto the other outline did not close,"
+        value = f"a gap of {_width(spot.width, units)}, which moving points onto the other outline did not close,"
     else:
-        value = f"a gap of {spot.width:.3g} m (it was not closed)"
+        value = f"a gap of {_width(spot.width, units)} (it was not closed)"
         hint = "draw the edges onto each other, or set close_gaps = true; if the gap is meant, lower gap_tolerance"
-    allowed = f"regions that touch, or are apart by more than the gap tolerance of {tolerance:.3g} m"
+    allowed = f"regions that touch, or are apart by more than the gap tolerance of {_width(tolerance, units)}"
     return Problem(f"between {gap_sides(outlines, links, spot)}", value, allowed, hint, xy=_xy(spot.z))
 
 
-def closed_notes(outlines: Sequence[Outline], links: Sequence[Link], gaps: Iterable[Spot]) -> list[str]:
+def closed_notes(
+    outlines: Sequence[Outline], links: Sequence[Link], gaps: Iterable[Spot], units: FileUnits = SI
+) -> list[str]:
     """Return a note on each gap that was closed."""
     return [
-        f"closed a gap of {spot.width:.3g} m between {gap_sides(outlines, links, spot)} "
-        f"at x = {spot.z.real:.6g} m, y = {spot.z.imag:.6g} m"
+        f"closed a gap of {_width(spot.width, units)} between {gap_sides(outlines, links, spot)} "
+        f"at {said_place(*_xy(spot.z), units)}"
         for spot in gaps
     ]
 
 
-def point_contacts(outlines: Sequence[Outline], links: Sequence[Link], nodes: Complexes) -> list[str]:
+def point_contacts(
+    outlines: Sequence[Outline], links: Sequence[Link], nodes: Complexes, units: FileUnits = SI
+) -> list[str]:
     """Return a note on each node around which the outside appears twice: parts touch there in one point only."""
     around: dict[int, list[int]] = {}
     for sector in sectors(links, nodes):
@@ -145,7 +168,7 @@ def point_contacts(outlines: Sequence[Outline], links: Sequence[Link], nodes: Co
             names = " and ".join(dict.fromkeys(f'region "{outlines[o].name}"' for o in owners if o != NOBODY))
             z = nodes[node]
             notes.append(
-                f"parts of {names} touch in one point only, at x = {z.real:.6g} m, y = {z.imag:.6g} m: "
+                f"parts of {names} touch in one point only, at {said_place(*_xy(z), units)}: "
                 f"the mesh ties them there, though a point conducts no heat"
             )
     return notes

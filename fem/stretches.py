@@ -7,6 +7,7 @@ import numpy as np
 
 from fem.errors import Problem
 from fem.outline import Outline, Point
+from fem.units import SI, FileUnits, said_place
 
 
 @dataclass(frozen=True)
@@ -72,13 +73,13 @@ def covers(stretch: Placed, outline: Outline, position: int, z: complex) -> bool
 
 
 def check_stretches(
-    outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], tolerance: float
+    outlines: Sequence[Outline], stretches: Sequence[OutlineStretch], tolerance: float, units: FileUnits = SI
 ) -> list[Problem]:
     """Return the stretches that have no outline or no length."""
     found = []
     names = ", ".join(f'"{outline.name}"' for outline in outlines)
     for stretch in stretches:
-        place = f'stretch of "{stretch.outline}" from ({stretch.start[0]:.6g}, {stretch.start[1]:.6g}) m'
+        place = f'stretch of "{stretch.outline}" from {said_place(*stretch.start, units)}'
         on = placed(outlines, stretch)
         if on is None:
             found.append(

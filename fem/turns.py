@@ -108,9 +108,7 @@ class Turner:
         seconds = bench.pace * bench.work(cells, len(study.finest.steps))
         if not self.fits(cells, seconds):
             return None
-        return Turn(
-            "", f"split every cell ({cells} on the finest mesh), since {worst.goal.why}", "everywhere"
-        )
+        return Turn("", f"split every cell ({cells} on the finest mesh), since {worst.goal.why}", "everywhere")
 
     def _cells(self, study: Study, judgement: Judgement, bench: Bench) -> Turn | None:
         mesh = study.levels[0].mesh

@@ -220,11 +220,13 @@ class Quantity:
     def allowed(self, units: FileUnits = SI) -> str:
         """Return the bounds as a message states them, in the file's units."""
         low, high, open_low = self.bounds
-        unit = units.of(self.kind)
+        unit, what = units.of(self.kind), KINDS[self.kind]
         ends = [f"{in_unit(end, unit, self.kind):.6g}" for end in (low, high)]
-        sign = ">" if open_low else ">="
         label = unit.removeprefix("delta_")
-        return f"{KINDS[self.kind].name} {sign} {ends[0]} and <= {ends[1]} {label}".rstrip()
+        if what.absolute and low == 0.0:
+            return f"a {what.name} not below absolute zero ({ends[0]} {label}), up to {ends[1]} {label}"
+        start = f"above {ends[0]}, up to" if open_low else f"from {ends[0]} to"
+        return f"{what.name} {start} {ends[1]} {label}".rstrip()
 
     def _validate(self, value: Any, info: core_schema.ValidationInfo) -> float:
         return self.read(value, reading(info.context).units)
@@ -250,6 +252,12 @@ def said(value: float, kind: str, units: FileUnits = SI) -> Said:
     """Return an SI value for a message, in the file's units: ``720 min``."""
     unit = units.of(kind)
     return Said(f"{in_unit(value, unit, kind):.6g} {unit.removeprefix('delta_')}".rstrip())
+
+
+def said_place(x: float, y: float, units: FileUnits = SI) -> Said:
+    """Return a point of the section, m, for a message, in the file's units: ``(500, 60) mm``."""
+    unit = units.of("length")
+    return Said(f"({in_unit(x, unit, 'length'):.6g}, {in_unit(y, unit, 'length'):.6g}) {unit}")
 
 
 def written(value: float, kind: str, units: FileUnits) -> float | int | str:

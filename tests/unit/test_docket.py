@@ -535,13 +535,13 @@ def test_variant_changes_by_path():
 
 
 def test_changes_by_path_keep_title_and_variants():
-    docket = make(variants=(Variant(name="warm", changes={"start.everywhere": 300.0}),))
-    other = docket.with_changes({"start.everywhere": 310.0})
+    known = variant({"start.everywhere": 300.0}, title="Deck")
+    other = known.with_changes({"start.everywhere": 310.0})
     assert other.start.everywhere == 310.0
-    assert (other.title, other.variants) == (docket.title, docket.variants)
-    assert docket.variant("warm").variants == ()
+    assert (other.title, other.variants) == ("Deck", known.variants)
+    assert known.variant("v").variants == ()
     with pytest.raises(DocketError, match="nowhere"):
-        docket.with_changes({"nowhere.at": 1})
+        known.with_changes({"nowhere.at": 1})
 
 
 def test_variant_keeps_callables():

@@ -1,6 +1,7 @@
 """The plan of a section: exact areas and lengths, names, interfaces, and what is refused."""
 
 import math
+import re
 
 import numpy as np
 import pytest
@@ -12,6 +13,7 @@ from fem.gmsh_session import gmsh_session
 from fem.plan import Plan
 from fem.section import Outline, OutlineEdge, OutlineStretch, build_plan, plan_of, stretch_label
 from fem.stock import Stock
+from fem.units import FileUnits, Reading
 from tests.support.shapes import disc, moved, outline, rect, ring_sector
 
 ROUNDING = 1e-12  # relative: sums of a few dozen float64 terms
@@ -509,3 +511,28 @@ def test_winding_is_right_on_the_chords_of_arcs(turned):
     z = np.exp(1j * turned) * np.linspace(-0.9, 0.9, 19)
     assert winding(loop, z).tolist() == [1] * 19
     assert winding([e.reversed() for e in reversed(loop)], z).tolist() == [-1] * 19
+
+
+# --- in which units faults speak
+
+
+@pytest.mark.parametrize(
+    ("outlines", "says"),
+    [
+        ([[(0, 0), (100, 100), (100, 0), (0, 100)]], "(50, 50) mm"),  # the diagonals of a square
+        ([[(0, 0), (100, 0), (100, 50), (0, 50)], [(0, 50.005), (100, 50.005), (100, 90), (0, 90)]], "0.005 mm"),
+    ],
+)
+def test_faults_speak_the_dockets_units(outlines, says):
+    regions = [
+        {"name": f"part {i}", "stock": "fireclay brick", "outline": [list(corner) for corner in outline]}
+        for i, outline in enumerate(outlines)
+    ]
+    millimetres = FileUnits("mm", "min", "degC")
+    data = {"section": {"kind": "planar"}, "region": regions, "clock": {"steady": True}, "units": millimetres}
+    with pytest.raises(SectionError) as caught:
+        plan_of(Docket.read(data, Reading(units=millimetres)))
+    told = str(caught.value)
+    assert says in told
+    assert not re.search(r"[0-9] m\b", told)
+    assert caught.value.problems[0].spot.endswith(" mm")
