@@ -17,6 +17,8 @@ from fem.problem import Face
 from fem.section import Plan
 from fem.where import regions_at
 
+SMALL, LARGE = 1e-3, 20.0
+"""m, across. Sections outside this are asked about, never refused; our own judgement, no source."""
 SAMPLES = 500
 """Instants at which a schedule is read, besides its breaks, for the lowest and highest value that is told."""
 
@@ -32,7 +34,7 @@ def check_docket(path: Path, *, variant: str | None, as_json: bool) -> None:
         With every problem of the docket, or of its section.
     """
     docket = read(asked_for(path, variant=variant))
-    with in_docket(path):
+    with in_docket(path, docket):
         posed = pose(docket)
     found = found_in(docket, posed)
     if as_json:
@@ -54,6 +56,7 @@ def found_in(docket: Docket, posed: Posed) -> Entry:
         The outside; `faces` names exposures, none where it is insulated.
     interfaces : list of {between, length}
     exposures : list of {name, on, length, values}
+        `on` names the edges, `length` is that of all of them.
         `values` by name: {over, lowest, highest, unit, jumps, kinks}; `over` tells what the value depends on; lowest
         and highest are null where that is more than time.
     clock : null or {begin, end, report_every, breaks}
@@ -71,13 +74,13 @@ def found_in(docket: Docket, posed: Posed) -> Entry:
         "content_hash": content_hash(docket),
         "steady": docket.steady,
         "revolution": posed.problem.revolution,
-        "notes": list(posed.plan.notes),
+        "notes": [*posed.plan.notes, *_odd_size(posed.plan, writer)],
         "variants": [variant.name for variant in docket.variants],
         "units": {**units, "difference": difference.unit.removeprefix("delta_")},
         "regions": _regions(posed, writer),
-        "edges": _edges(posed, writer.scale("length")),
+        "edges": _edges(posed, writer),
         "interfaces": _interfaces(posed.plan, writer.scale("length")),
-        "exposures": [_exposure(face, posed, writer) for face in posed.problem.faces],
+        "exposures": _exposures(posed, writer),
         "clock": _clock(docket, posed, writer.scale("time")),
         "gauges": _gauges(docket, posed.plan, writer),
         "limits": [{"name": limit.name, "sentence": limit.sentence(docket.units)} for limit in docket.limits],
@@ -100,15 +103,22 @@ def _regions(posed: Posed, writer: Writer) -> list[Entry]:
     ]
 
 
-def _edges(posed: Posed, scale: Scale) -> list[Entry]:
+def _odd_size(plan: Plan, writer: Writer) -> list[str]:
+    """Return a remark on a section so large or so small that its unit of length may be a slip."""
+    if SMALL <= plan.size <= LARGE:
+        return []
+    return [f"the section is {writer.length(plan.size)} across: is the unit of length right?"]
+
+
+def _edges(posed: Posed, writer: Writer) -> list[Entry]:
     """Return the outside, edge by edge; a part of an edge that faces something else is an entry of its own."""
     lengths: dict[tuple[str, tuple[str, ...]], float] = {}
     for i, curve in enumerate(posed.plan.curves):
         if min(curve.left, curve.right) < 0:
             faces = tuple(face.name for face in posed.problem.faces if i in face.curves)
-            key = (", ".join(sorted(curve.labels)), faces)
+            key = (", ".join(writer.words(label) for label in sorted(curve.labels)), faces)
             lengths[key] = lengths.get(key, 0.0) + curve.length
-    rows = sorted(lengths.items())
+    rows, scale = sorted(lengths.items()), writer.scale("length")
     return [{"name": name, "length": scale.out(length), "faces": list(faces)} for (name, faces), length in rows]
 
 
@@ -126,16 +136,26 @@ def _interfaces(plan: Plan, scale: Scale) -> list[Entry]:
 # --- exposures --------------------------------------------------------------------------------------
 
 
-def _exposure(face: Face, posed: Posed, writer: Writer) -> Entry:
+def _exposures(posed: Posed, writer: Writer) -> list[Entry]:
+    """Return the exposures, each once: what it says is the same on all its edges."""
+    scale = writer.scale("length")
+    found: dict[str, Entry] = {}
+    for face in posed.problem.faces:
+        if face.name not in found:
+            found[face.name] = {"name": face.name, "on": [], "length": 0.0, "values": _values(face, posed, writer)}
+        found[face.name]["on"].append(writer.words(face.edge))
+        found[face.name]["length"] += scale.out(sum(posed.plan.curves[i].length for i in face.curves))
+    return list(found.values())
+
+
+def _values(face: Face, posed: Posed, writer: Writer) -> Entry:
     laws = [] if face.held is None else [("held at", face.held, "temperature")]
     laws += [("flux", flux, "heat flux") for flux in face.fluxes]
     for film in face.films:
         laws += [("film", film.coefficient, "film coefficient"), ("ambient", film.ambient, "temperature")]
     for radiant in face.radiants:
         laws += [("emissivity", radiant.emissivity, "fraction"), ("surroundings", radiant.surroundings, "temperature")]
-    length = sum(posed.plan.curves[i].length for i in face.curves)
-    values = {name: value_of(law, kind, posed, writer) for name, law, kind in laws}
-    return {"name": face.name, "on": face.edge, "length": writer.scale("length").out(length), "values": values}
+    return {name: value_of(law, kind, posed, writer) for name, law, kind in laws}
 
 
 def value_of(law: Law, kind: str, posed: Posed, writer: Writer) -> Entry:

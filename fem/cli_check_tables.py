@@ -39,7 +39,8 @@ def _tables(found: Entry) -> list[tuple[str, tuple[str, ...], list[list[str]]]]:
     ]
     touching = [[" and ".join(i["between"]), f"{plain(i['length'])} {length}"] for i in found["interfaces"]]
     exposures = [
-        [e["name"], e["on"], f"{plain(e['length'])} {length}", _values_text(e["values"])] for e in found["exposures"]
+        [e["name"], "\n".join(e["on"]), f"{plain(e['length'])} {length}", _values_text(e["values"])]
+        for e in found["exposures"]
     ]
     gauges = [
         [g["name"], f"({plain(g['x'])}, {plain(g['y'])}) {length}", g["region"], f"{plain(g['band'])} {step}"]

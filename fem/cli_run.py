@@ -3,7 +3,7 @@
 import os
 from collections.abc import Iterator
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Any
@@ -14,12 +14,11 @@ from fem.cli_tables import show_end, show_record
 from fem.cli_watch import Watch
 from fem.docket import Docket
 from fem.docket_file import read_docket
-from fem.docket_form import changed
 from fem.docket_hash import content_hash
 from fem.errors import DocketError, StoreError
 from fem.export_figures import figures_of
+from fem.numbers import Writer
 from fem.record import Record
-from fem.units import Reading
 
 QUICK, VOUCH = "quick look", "vouch"
 
@@ -81,21 +80,20 @@ def read(asked: Asked) -> Docket:
     if not asked.changes:
         return docket
     try:
-        form = changed(docket.to_form(), asked.changes)
-        del form["docket"]
-        data = {**form, "title": docket.title, "units": docket.units}
-        return Docket.read(data, Reading(units=docket.units, logs=docket.logs))
+        return docket.with_changes(asked.changes)
     except DocketError as error:
         raise error.in_file("command line") from None
 
 
 @contextmanager
-def in_docket(path: Path) -> Iterator[None]:
+def in_docket(path: Path, docket: Docket) -> Iterator[None]:
     """Name the docket's file in what is found wrong once it was read: its section, its gauges."""
     try:
         yield
     except DocketError as error:
-        raise error.in_file(path.name) from None
+        words = Writer(docket.units).words
+        told = (replace(problem, value=words(problem.value)) for problem in error.problems)
+        raise DocketError(told).in_file(path.name) from None
 
 
 def run(asked: Asked, kind: str) -> int:
@@ -111,11 +109,11 @@ def run(asked: Asked, kind: str) -> int:
     kept = None if asked.again else on_shelf(shelf, digest, kind)
     if kept is not None:
         folder, record = kept
-        say(f"read from the shelf, where it lies since {record.created}; --again runs it anew")
+        say(shelf_text(record))
         _show(asked, record, str(folder))
         return exit_code(record)
     refuse_unwritable(shelf)
-    with in_docket(asked.docket):
+    with in_docket(asked.docket, docket):
         record = _work(docket, kind)
     folder = store.place_on(shelf, digest, kind, record.outcome)
     try:
@@ -127,11 +125,21 @@ def run(asked: Asked, kind: str) -> int:
     return exit_code(record)
 
 
+def shelf_text(record: Record) -> str:
+    """Return the line that tells that a record was not made now, and that it is open if it is."""
+    told = f"read from the shelf, where it lies since {record.created}; --again runs it anew"
+    if record.kind == QUICK or record.standing == "vouched":
+        return told
+    ended = f", for its work ended so: {record.turns[-1].then.removeprefix('stop: ')}" if record.turns else ""
+    return f"{told}. This vouch is open{ended}"
+
+
 def on_shelf(shelf: Path, digest: str, kind: str) -> tuple[Path, Record] | None:
     """Return the folder and the record that answer a docket; None where none does, or only a damaged one."""
     try:
         folder = store.find(shelf, digest, kind)
         if folder is None:
+            _tell_unfinished(shelf, digest, kind)
             return None
         record = store.load(folder)
     except StoreError as error:
@@ -141,6 +149,14 @@ def on_shelf(shelf: Path, digest: str, kind: str) -> tuple[Path, Record] | None:
     if made_by != this:
         say(f"the record on the shelf was made by heatvouch {made_by}; this is {this}")
     return folder, record
+
+
+def _tell_unfinished(shelf: Path, digest: str, kind: str) -> None:
+    """Tell of a record that does not answer the docket, though work went into it."""
+    for outcome in (store.INTERRUPTED, store.UNFINISHED):
+        folder = store.place_on(shelf, digest, kind, outcome)
+        if folder.exists():
+            say(f"a {kind} of this docket that did not finish ({outcome}) is not used; it lies in {folder}")
 
 
 def _version() -> str:
@@ -186,5 +202,5 @@ def exit_code(record: Record) -> int:
     if record.outcome == store.INTERRUPTED:
         return INTERRUPTED
     if record.kind == QUICK:
-        return VOUCHED if record.outcome == "finished" else OPEN
+        return VOUCHED if record.outcome == store.FINISHED else OPEN
     return VOUCHED if record.standing == "vouched" else OPEN

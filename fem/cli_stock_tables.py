@@ -5,6 +5,7 @@ from collections.abc import Iterable
 from typing import Any, get_args
 
 import numpy as np
+from numpy.typing import NDArray
 from rich.console import Console
 from rich.padding import Padding
 from rich.table import Table
@@ -12,12 +13,14 @@ from rich.text import Text
 
 from fem.cli_tables import plain_table, under
 from fem.properties import SourceKind
-from fem.stock import PROPERTIES, Stock, stock_table
+from fem.stock import PROPERTIES, Stock
 from fem.units import celsius
 
 UNITS = {"conductivity": "W/(m K)", "density": "kg/m³", "specific_heat": "J/(kg K)"}
-ROWS = 9
-"""Temperatures at which `show` prints a stock."""
+NAME_WIDTH = 26
+"""Characters that a name has to itself in the list, on a screen however narrow."""
+ROOM = 293.15
+"""K, where a constant is read."""
 KINDS: tuple[str, ...] = get_args(SourceKind)
 """How far a value can be traced, from best to least."""
 
@@ -28,27 +31,23 @@ def weakest_kind(stock: Stock) -> str:
 
 
 def listing_table(stocks: Iterable[Stock]) -> Table:
-    """Return the list: one line a stock, its values over its range, the weakest kind of source among them."""
-    table = plain_table(
-        "stock",
-        "family",
-        "k, W/(m K)",
-        "density, kg/m³",
-        "c, J/(kg K)",
-        "holds, °C",
-        "sources",
-        wrapped=("stock", "sources"),
-    )
+    """Return the list, family by family: values over the range, the weakest kind of source among them."""
+    table = plain_table("stock", "k, W/(m K)", "density, kg/m³", "c, J/(kg K)", "holds, °C", "sources")
+    table.columns[0].width = NAME_WIDTH
+    family = ""
     for stock in stocks:
+        if stock.family != family:
+            family = stock.family
+            table.add_row(Text(family, style="bold"))
         values = [_extent(stock, name) for name in PROPERTIES]
-        table.add_row(stock.name, stock.family, *values, _range(stock.valid_range), weakest_kind(stock))
+        table.add_row(stock.name, *values, _range(stock.valid_range), weakest_kind(stock))
     return table
 
 
 def _extent(stock: Stock, name: str) -> str:
     """Return the lowest and highest value over the range of validity."""
     low, high = stock.valid_range
-    rows = stock.properties()[name].rows()[0] if math.isfinite(high) else np.array([293.15])
+    rows = stock.properties()[name].rows()[0] if math.isfinite(high) else np.array([ROOM])
     T = np.union1d(np.array([low, high]), rows[(rows >= low) & (rows <= high)]) if math.isfinite(high) else rows
     values = np.broadcast_to(np.asarray(stock.properties()[name].to_law()(T=T), dtype=np.float64), T.shape)
     return _between(float(values.min()), float(values.max()))
@@ -71,15 +70,19 @@ def show(console: Console, stock: Stock) -> None:
     console.print(Text(f"{stock.family}{also}", style="dim"))
     if stock.note:
         console.print(Text(stock.note))
-    values = stock_table(stock, ROWS)
     table = Table(
         *("T, °C", "k, W/(m K)", "density, kg/m³", "c, J/(kg K)", "diffusivity, mm²/s"), box=None, padding=(0, 2)
     )
     for column in table.columns:
         column.justify = "right"
-    for T, k, rho, c, alpha in zip(*values, strict=True):
-        table.add_row(f"{celsius(T):.0f}", f"{k:.4g}", f"{rho:.4g}", f"{c:.4g}", f"{1e6 * alpha:.3g}")
-    console.print(under("Values, linear between the rows of their tables", table))
+    T = table_rows(stock)
+    k, rho, c = (np.broadcast_to(p.to_law()(T=T), T.shape) for p in stock.properties().values())
+    first = [_range(stock.valid_range)] if _all_constant(stock) else [f"{celsius(t):.5g}" for t in T]
+    for t, *values in zip(first, k, rho, c, strict=True):
+        alpha = values[0] / (values[1] * values[2])
+        table.add_row(t, *(f"{value:.4g}" for value in values), f"{1e6 * alpha:.3g}")
+    title = "Values" if _all_constant(stock) else "Values at the rows of their tables, linear between"
+    console.print(under(title, table))
     console.print(Text("\nSources", style="bold"))
     for name in PROPERTIES:
         source, kind = stock.source_of(name)
@@ -88,6 +91,17 @@ def show(console: Console, stock: Stock) -> None:
         told = Text(f"{name.replace('_', ' ')}{held}: ", style="bold")
         told.append(f"[{kind}] {source}", style="default not bold")
         console.print(Padding(told, (0, 0, 0, 2)))
+
+
+def _all_constant(stock: Stock) -> bool:
+    return all(not len(own.rows()[0]) for own in stock.properties().values())
+
+
+def table_rows(stock: Stock) -> NDArray[np.float64]:
+    """Return the temperatures, K, (n,) at which any of a stock's properties has a row; one, where all are constant."""
+    if _all_constant(stock):
+        return np.array([stock.valid_range[0] if math.isfinite(stock.valid_range[1]) else ROOM])
+    return np.unique(np.concatenate([own.rows()[0] for own in stock.properties().values()]))
 
 
 def listing(stock: Stock) -> dict[str, Any]:

@@ -28,7 +28,7 @@ from fem.record import FORMAT, Fields, Record, RecordMesh
 from fem.store_head import Head
 
 HEAD, SUMS, DOCKET = "record.json", "SHA256SUMS", "docket.toml"
-INTERRUPTED = "interrupted"
+FINISHED, INTERRUPTED, UNFINISHED = "finished", "interrupted", "unfinished"
 HASH_DIGITS = 12
 
 Arrays = dict[str, NDArray[Any]]
@@ -48,16 +48,18 @@ def shelf_of(docket: Path) -> Path:
     return docket.with_name(re.sub(r"(\.docket)?(\.toml|\.zip)?$", "", docket.name, count=1) + ".records")
 
 
-def place_on(shelf: Path, content_hash: str, kind: str, outcome: str = "finished") -> Path:
-    """Return the folder of a record; an interrupted one lies apart and never takes the place of a finished one."""
+def place_on(shelf: Path, content_hash: str, kind: str, outcome: str = FINISHED) -> Path:
+    """Return the folder of a record; one of work that did not finish lies apart, and never in a finished one's place."""
     name = f"{kind.replace(' ', '-')}-{content_hash[:HASH_DIGITS]}"
-    return shelf / (f"{name}-{INTERRUPTED}" if outcome == INTERRUPTED else name)
+    if outcome == FINISHED:
+        return shelf / name
+    return shelf / f"{name}-{INTERRUPTED if outcome == INTERRUPTED else UNFINISHED}"
 
 
 def find(shelf: Path, content_hash: str, kind: str) -> Path | None:
     """Return the folder of the record that answers a docket, or None when the work is still to be done.
 
-    An interrupted record answers nothing, and one whose docket held callables is never found: its hash does not
+    A record of work that did not finish answers nothing, and one whose docket held callables is never found: its hash does not
     know their content.
 
     Raises
@@ -70,7 +72,7 @@ def find(shelf: Path, content_hash: str, kind: str) -> Path | None:
         return None
     head = _read_head(folder)
     same = head.content_hash == content_hash and head.kind == kind
-    return folder if same and head.shelvable and head.outcome != INTERRUPTED else None
+    return folder if same and head.shelvable and head.outcome == FINISHED else None
 
 
 # --- writing --------------------------------------------------------------------------------------

@@ -2,9 +2,10 @@
 
 import numpy as np
 
-from fem.bands import ASYMPTOTIC, ORDER_LOW
+from fem.bands import ASYMPTOTIC, NARROWEST, ORDER_LOW
 from fem.checks.facts import Facts
 from fem.findings import Finding
+from fem.history import Key
 
 MATTERS = 0.1
 """An odd order is worth a word only where the band is more than this part of the wanted one."""
@@ -18,9 +19,12 @@ def check(facts: Facts) -> list[Finding]:
     if len(facts.study.levels) < 3:
         return []
     figures, found = facts.figures, []
+    floor: dict[Key, float] = {}  # a band that was only widened to what is the narrowest said shows no order
+    for goal in facts.goals:
+        floor[goal.key] = max(floor.get(goal.key, 0.0), NARROWEST * goal.wanted)
     for goal in facts.goals:
         i = figures.row(goal.key)
-        relevant = goal.counts(figures) & (figures.space[i] > MATTERS * goal.wanted)
+        relevant = goal.counts(figures) & (figures.space[i] > max(MATTERS * goal.wanted, floor[goal.key]))
         if not relevant.any():
             continue
         order = float(np.min(figures.order[i, relevant]))

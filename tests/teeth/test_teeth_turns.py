@@ -189,3 +189,14 @@ def test_a_limit_on_the_very_value_stays_open_within_the_allowance():
     assert record.verdicts[0].call is Call.too_close
     assert record.standing == "open"
     assert any("too close to call" in reason.text for reason in record.reasons)
+
+
+def test_no_band_is_narrower_than_a_fiftieth_of_the_wanted_one_and_such_a_band_shows_no_order():
+    """A limit that lies nearer than that stays open, but nobody chases the noise of differences far below it."""
+    exact = slab_film(0.0, 600.0, half=0.04, k=1.0, alpha=1 / 1.8e6, h=60.0, start=293.15, ambient=1073.15)
+    record = vouch(limited(exact + 0.3, wanted=Wanted(gauges=30.0)))
+    _, band = record.figures.series(Key("gauge", "back"))
+    assert band.min() >= 0.02 * 30.0 * (1 - 1e-12)
+    assert record.verdicts[0].call is Call.too_close
+    assert not any(f.check == "order" for f in record.findings)
+    assert len(record.turns) == 1
