@@ -17,7 +17,7 @@ from fem.problem import Problem
 from fem.run import Gauges
 from fem.study import Study
 from fem.tables import figures
-from fem.verdicts import Verdict
+from fem.verdicts import Call, Verdict
 
 WANTED = "the wanted band asks for it"
 """Why a goal is there that the docket states."""
@@ -67,7 +67,12 @@ class Judgement:
     @property
     def settled(self) -> bool:
         """True when every wanted band is reached, every limit settled, and errors fall as theory says."""
-        return all(need.total <= 1.0 for need in self.needs) and not self.restless
+        return all(need.total <= 1.0 for need in self.needs) and not self.restless and not self.too_close
+
+    @property
+    def too_close(self) -> tuple[str, ...]:
+        """Return the limits that are too close to call."""
+        return tuple(verdict.limit for verdict in self.verdicts if verdict.call is Call.too_close)
 
     @property
     def restless(self) -> bool:

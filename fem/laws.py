@@ -97,7 +97,10 @@ def as_law(value: Any, *, allowed: Iterable[str] = VARIABLES, breaks: Iterable[B
     if isinstance(value, Law):
         law = value
     elif callable(value):
-        names = frozenset(inspect.signature(value).parameters)
+        parameters = inspect.signature(value).parameters.values()
+        names = frozenset(
+            p.name for p in parameters if p.default is inspect.Parameter.empty
+        )  # defaults bind values, not variables
         law = Law(value, names, tuple(sorted(breaks)), getattr(value, "__name__", "callable"))
     elif isinstance(value, int | float | np.number):
         law = constant(float(value))

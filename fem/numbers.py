@@ -233,12 +233,13 @@ class Writer:
         Examples
         --------
         >>> Writer(FileUnits("mm", "min", "degC")).words("kiln on stretch:brick:0.5,0.06:0.5,0.114")
-        'kiln on brick, (500, 60) mm to (500, 114) mm'
+        'kiln on brick, (500, 60) to (500, 114) mm'
         """
 
         def written(label: re.Match[str]) -> str:
             x0, y0, x1, y1 = map(float, label.groups()[1:])
-            return f"{label[1]}, {said_place(x0, y0, self.units)} to {said_place(x1, y1, self.units)}"
+            start, end = said_place(x0, y0, self.units), said_place(x1, y1, self.units)
+            return f"{label[1]}, {start.removesuffix(f' {self.units.length}')} to {end}"
 
         return STRETCH.sub(written, text)
 

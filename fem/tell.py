@@ -4,7 +4,6 @@ import numpy as np
 
 from fem.checks.facts import Namer
 from fem.judge import Judgement, too_wide
-from fem.verdicts import Call
 
 
 def found_text(judgement: Judgement, names: Namer) -> str:
@@ -22,9 +21,8 @@ def found_text(judgement: Judgement, names: Namer) -> str:
             )
         else:
             parts.append(f"every band is within what was asked at the reporting times (widest {worst.total:.2g} of it)")
-    close = [v.limit for v in judgement.verdicts if v.call is Call.too_close]
-    if close:
-        parts.append("too close to call: " + ", ".join(f'"{name}"' for name in close))
+    if judgement.too_close:
+        parts.append("too close to call: " + ", ".join(f'"{name}"' for name in judgement.too_close))
     blocking = sum(f.blocks for f in judgement.findings)
     if blocking:
         parts.append(f"{blocking} finding{'s' if blocking > 1 else ''} to close")

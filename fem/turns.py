@@ -15,6 +15,7 @@ AIM = 0.5
 """Cells are split until their doubt is this part of the wanted band: the doubt is about three times the error that it stands for."""
 TIME_SHARE = 0.5
 """Steps are split first when the time part is more than this share of the band."""
+BEYOND_REACH = "stop: a limit lies nearer to the number than a fiftieth of the wanted band; no mesh decides that"
 WHOLE_STUDY = 27 / 16
 """Work of a whole study (three meshes, three step sequences) over that of its finest run."""
 
@@ -29,15 +30,17 @@ class Turn:
         What the study showed.
     then : str
         What is done next.
-    study : Study or None
-        None when this is the last turn.
-    spent : bool
-        True when the allowance, not the answer, ended the work.
+    todo : str
+        ``settled`` or ``spent`` (the last turn), or what is refined: ``everywhere``, ``cells``, ``steps``.
+    mesh : Mesh or None
+        The first mesh of the next study, when cells are split.
+    owing : (n_steps,) bool or None
+        The steps to halve.
     """
 
     found: str
     then: str
-    todo: str  # settled | spent | everywhere | cells | steps
+    todo: str
     mesh: Mesh | None = None
     owing: np.ndarray | None = None
 
@@ -66,9 +69,9 @@ class Turner:
         """Return the next turn."""
         if judgement.settled:
             return Turn(found, "nothing: every wanted band is reached and every limit is settled", "settled")
-        worst = judgement.needs[0]
-        if worst.total <= 1.0:
-            return self._prove(study, bench, worst, found)
+        worst = judgement.needs[0] if judgement.needs else None
+        if worst is None or worst.total <= 1.0:
+            return self._prove(study, bench, found) if judgement.restless else Turn(found, BEYOND_REACH, "spent")
         stalled = self._last is not None and self._last[0] != "everywhere" and worst.total > 0.7 * self._last[1]
         for offer in self._offers(study, judgement, bench, worst, stalled=stalled):
             if offer is not None:
@@ -76,15 +79,14 @@ class Turner:
                 return Turn(found, offer.then, offer.todo, offer.mesh, offer.owing)
         return Turn(found, "stop: nothing that would help fits the rest of the allowance", "spent")
 
-    def _prove(self, study: Study, bench: Bench, worst: Need, found: str) -> Turn:
+    def _prove(self, study: Study, bench: Bench, found: str) -> Turn:
         """Return the turn that looks whether differences between meshes shrink on a finer one, where all else is settled."""
-        offer = self._everywhere(study, bench, worst)
+        offer = self._everywhere(study, bench, "differences between meshes do not yet shrink as they must")
         if offer is None:
             return Turn(
                 found, "stop: a finer mesh, which would show whether errors fall, does not fit the allowance", "spent"
             )
-        then = "split every cell, since differences between meshes do not yet shrink as they must"
-        return Turn(found, then, "everywhere")
+        return Turn(found, offer.then, "everywhere")
 
     def _offers(
         self, study: Study, judgement: Judgement, bench: Bench, worst: Need, *, stalled: bool
@@ -92,8 +94,8 @@ class Turner:
         if not study.levels or len(study.levels) < 3:
             return []
         if study.timing and worst.time > TIME_SHARE * worst.total:
-            return [self._steps(study, bench, worst), self._everywhere(study, bench, worst)]
-        everywhere = self._everywhere(study, bench, worst)
+            return [self._steps(study, bench, worst), self._everywhere(study, bench, worst.goal.why)]
+        everywhere = self._everywhere(study, bench, worst.goal.why)
         local = self._cells(study, judgement, bench)
         if local is None or stalled:
             return [everywhere, local]
@@ -103,12 +105,12 @@ class Turner:
         dearer = WHOLE_STUDY * growth > sum(4**k for k in range(1, rounds + 1))
         return [everywhere, local] if dearer else [local, everywhere]
 
-    def _everywhere(self, study: Study, bench: Bench, worst: Need) -> Turn | None:
+    def _everywhere(self, study: Study, bench: Bench, why: str) -> Turn | None:
         cells = 4 * len(study.finest.mesh.cells)
         seconds = bench.pace * bench.work(cells, len(study.finest.steps))
         if not self.fits(cells, seconds):
             return None
-        return Turn("", f"split every cell ({cells} on the finest mesh), since {worst.goal.why}", "everywhere")
+        return Turn("", f"split every cell ({cells} on the finest mesh), since {why}", "everywhere")
 
     def _cells(self, study: Study, judgement: Judgement, bench: Bench) -> Turn | None:
         mesh = study.levels[0].mesh

@@ -40,8 +40,8 @@ def _reentrant(facts: Facts) -> list[Finding]:
             Finding(
                 "corner",
                 f"re-entrant corner of {np.rad2deg(angle):.0f} degrees at {facts.names.place(x, y)}: the two finest meshes differ by up to "
-                f"{facts.names.difference(near)} in the cells next to it; the heat flux density at the point itself has no finite value, and "
-                f"so no band",
+                f"{facts.names.difference(near)} in the cells next to it; "
+                "the heat flux density at the point itself has no finite value, and so no band",
                 "",
                 float(x),
                 float(y),

@@ -17,7 +17,7 @@ from rich.console import Console
 from typer.testing import CliRunner
 
 from fem import cli, cli_run, store
-from fem.cli_answer import BAD_INPUT, BUG, DONE, INTERRUPTED, OPEN, VOUCHED, answering
+from fem.cli_answer import AS_IT_IS, BAD_INPUT, BUG, DONE, INTERRUPTED, OPEN, VOUCHED, answering
 from fem.cli_tables import show_end, show_record
 from fem.cli_watch import Watch
 from fem.docket_file import read_docket
@@ -148,6 +148,30 @@ def test_help_gives_examples_and_exit_codes(words):
             assert f"{code}  " in told.output
 
 
+@pytest.mark.parametrize("words", [[], ["check"], ["vouch"], ["export"], ["stock"], ["stock", "list"]])
+def test_each_example_of_help_has_a_line_of_its_own(words):
+    lines = [line.strip() for line in call(*words, "--help").output.splitlines()]
+    assert not [line for line in lines if "\\b" in line]
+    examples = lines[lines.index("Examples") + 1 :]
+    examples = examples[: examples.index("")]
+    assert len(examples) > 1
+    for line in examples:
+        assert line.startswith("heatvouch ")
+        assert line.count("heatvouch") == 1
+
+
+def test_reader_that_leaves_early_ends_the_program_quietly():
+    """128 + 13 is what a POSIX shell says of a program that SIGPIPE ended (XCU 2.8.2)."""
+    line = f"set -o pipefail; COLUMNS=100 {sys.executable} -m fem.cli stock list --json | head -c 1"
+    told = subprocess.run(["bash", "-c", line], cwd=ROOT, capture_output=True, text=True, check=False)
+    assert (told.returncode, told.stdout, told.stderr) == (141, "{", "")
+
+
+def test_help_tells_what_a_limit_not_met_ends_in():
+    told = " ".join(call("vouch", "--help").output.split())
+    assert "0 vouched, also where a limit is vouched to be not met" in told
+
+
 def test_no_command_prints_help():
     assert call().exit_code == DONE
     assert call().output == call("--help").output
@@ -195,7 +219,7 @@ def test_problems_come_as_json_too(tmp_path):
     assert told.exit_code == BAD_INPUT
     (problem,) = json.loads(told.stdout)["problems"]
     assert problem["file"] == "bad.docket.toml"
-    assert set(problem) == {"place", "value", "allowed", "hint", "file", "xy"}
+    assert set(problem) == {"place", "value", "allowed", "hint", "file", "xy", "spot"}
 
 
 def test_missing_docket_is_bad_input(tmp_path):
@@ -285,6 +309,37 @@ def test_interrupted_work_is_kept_apart_and_done_anew(docket, made):
     assert made.calls == ["vouch", "vouch"]
 
 
+def test_work_that_the_allowance_ended_is_never_served_as_done(docket, made):
+    made.state[:] = ["open", "the allowance of seconds ran out in the first study"]
+    assert call("vouch", docket).exit_code == OPEN
+    (folder,) = docket.with_name("bar.records").iterdir()
+    assert folder.name.endswith("-unfinished")
+    told = call("vouch", docket)
+    assert "did not finish" in told.output
+    assert "read from the shelf" not in told.output
+    assert made.calls == ["vouch", "vouch"]
+    assert call("export", docket, "--to", docket.parent / "out").exit_code == BAD_INPUT
+
+
+def test_unfinished_record_in_the_place_of_a_finished_one_is_not_found(docket, record):
+    shelf = store.shelf_of(docket)
+    for outcome, found in (("newton did not converge", False), ("finished", True)):
+        folder = store.place_on(shelf, record.content_hash, "vouch")
+        store.save(replace(record, outcome=outcome), folder)
+        assert (store.find(shelf, record.content_hash, "vouch") is not None) == found
+
+
+def test_open_record_from_the_shelf_says_so(docket, made, record):
+    made.state[0] = "open"
+    call("vouch", docket)
+    told = call("vouch", docket)
+    assert made.calls == ["vouch"]
+    assert f"This vouch is open, for its work ended so: {record.turns[-1].then}" in told.output
+    made.state[0] = "vouched"
+    call("vouch", docket, "--again")
+    assert "This vouch is open" not in call("vouch", docket).output
+
+
 def test_shelf_that_cannot_be_written_is_refused_before_the_work(docket, made, monkeypatch):
     monkeypatch.setattr(cli_run.os, "access", lambda _, mode: mode != os.W_OK)  # root may write anywhere
     told = call("vouch", docket)
@@ -323,6 +378,46 @@ def test_check_tells_what_the_docket_says(docket):
     assert "0 to 10 min" in told.output
     assert "border of bar" in told.output
     assert "nothing wrong was found" in told.output
+
+
+def test_check_tells_each_exposure_once(docket):
+    both = 'radiant = { emissivity = 0.8, surroundings = 40 }\non = ["bar.bottom", "bar.left"]'
+    docket.write_text(DOCKET.replace('on = "bar.*"', both))
+    (room,) = json.loads(call("check", docket, "--json").stdout)["exposures"]
+    assert room["on"] == ["bar.bottom", "bar.left"]
+    assert room["length"] == pytest.approx(150.0, rel=1e-12)  # 100 mm and 50 mm
+    assert call("check", docket).output.count("emissivity") == 1
+
+
+@pytest.mark.parametrize(("unit", "asks"), [("m", True), ("mm", False), ("cm", False)])
+def test_check_asks_about_a_section_of_odd_size(docket, unit, asks):
+    docket.write_text(DOCKET.replace('length = "mm"', f'length = "{unit}"'))
+    told = call("check", docket).output
+    assert ("is the unit of length right?" in told) == asks
+    assert ("111.8 m across" in told) == asks  # the diagonal of 100 by 50
+
+
+def test_names_that_look_like_emoji_or_markup_are_shown_as_they_are(docket):
+    text = DOCKET.replace("Bar in a warm room", ":brick: [bold]room").replace('name = "skin"', 'name = ":fire:"')
+    docket.write_text(text)
+    told = call("check", docket).output
+    assert ":brick: [bold]room" in told
+    assert ":fire:" in told
+
+
+def test_stretches_are_told_in_words(docket):
+    docket.write_text(DOCKET.replace('on = "bar.*"', 'on = { region = "bar", start = [100, 10], end = [100, 40] }'))
+    told = call("check", docket).output
+    assert "bar, (100, 10) to (100, 40) mm" in told
+    assert "stretch:" not in told
+
+
+def test_crossing_outline_is_told_in_the_dockets_units(docket):
+    docket.write_text(DOCKET.replace('[100, 50, "top"], [0, 50, "left"]', '[0, 50, "top"], [100, 50, "left"]'))
+    told = call("check", docket)
+    assert told.exit_code == BAD_INPUT
+    assert "(50, 25) mm" in told.output  # where the diagonals of the bar meet
+    assert " m," not in told.output
 
 
 def test_check_as_json_holds_numbers_in_the_dockets_units(docket):
@@ -562,7 +657,7 @@ def test_problem_shows_its_spot():
 
 
 def shown(record, width=120):
-    console = Console(width=width, record=True, file=io.StringIO())
+    console = Console(width=width, record=True, file=io.StringIO(), **AS_IT_IS)
     show_record(console, record)
     show_end(console, record, "bar.records/vouch-3f")
     return console.export_text()
@@ -614,6 +709,19 @@ def test_ledger_tells_each_edge_of_an_exposure(record):
     assert "in through kiln, all its edges   14.200 ± 0.018 MJ/m" in text
     assert "of it on deck.top" in text
     assert "2.2 MJ/m" in text
+
+
+def test_ledger_names_stretches_in_words(record):
+    label = "kiln on stretch:deck:0.5,0.06:0.5,0.114"
+    told = shown(replace(record, ledger=replace(record.ledger, through=((label, 1.42e7),))))
+    assert "in through kiln on deck, (500, 60) to (500, 114) mm" in told
+
+
+def test_limit_without_a_value_has_no_instant(record):
+    unknown = replace(record.verdicts[0], call=Call.too_close, margin=math.nan, band=math.inf)
+    told = shown(replace(record, verdicts=(unknown,), outcome="interrupted"))
+    assert "no value" in told
+    assert "tightest" not in told
 
 
 def test_work_that_stopped_early_is_not_taken_for_the_end(quick):
@@ -729,6 +837,28 @@ def test_every_stock_can_be_shown_with_its_sources():
     source, kind = library()["fireclay brick"].source_of("conductivity")
     assert kind in told
     assert source[:40] in told
+
+
+def test_stock_show_has_the_rows_that_are_stated():
+    def rows(name):
+        lines = call("stock", "show", name).output.split("diffusivity, mm²/s", 1)[1].split("Sources")[0]
+        return [line.split() for line in lines.splitlines() if line.strip()]
+
+    granite = library()["granite"]
+    ((*reach, k, rho, c, _),) = rows("granite")
+    assert [float(x) for x in (k, rho, c)] == [own.value for own in granite.properties().values()]
+    assert reach[1] == "to"
+    brick = library()["fireclay brick"].properties()
+    stated = sorted({round(float(T) - 273.15, 6) for own in brick.values() for T in own.rows()[0]})
+    assert [float(row[0]) for row in rows("fireclay brick")] == pytest.approx(stated)
+
+
+def test_stock_list_breaks_no_name_into_many_lines(monkeypatch):
+    monkeypatch.setenv("COLUMNS", "100")
+    lines = [line[1:27].rstrip() for line in call("stock", "list").output.splitlines()]
+    for name in library():
+        starts = [i for i, line in enumerate(lines) if line and name.startswith(line)]
+        assert any(" ".join(" ".join(lines[i : i + 2]).split()).startswith(name) for i in starts), name
 
 
 def test_unknown_stock_is_refused_with_the_nearest():

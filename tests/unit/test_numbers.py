@@ -3,13 +3,17 @@
 import math
 from decimal import Decimal
 
+import numpy as np
 import pytest
 from hypothesis import assume, given
 from hypothesis import strategies as st
 
-from fem.figures import Peak
+from fem.bands import Grid
+from fem.docket import Stretch
+from fem.figures import Figures
 from fem.history import Key
 from fem.numbers import Writer, peak_text, rounded, series_text, span
+from fem.section import stretch_label
 from fem.units import FileUnits
 
 METRIC = Writer(FileUnits("mm", "min", "degC"))
@@ -100,9 +104,51 @@ def test_crossing_says_what_is_not_certain():
     assert METRIC.crossing(math.inf, math.inf, math.inf) == "not reached within the clock"
 
 
+def history(t, celsius, band):
+    """Figures of one gauge."""
+    t, value = np.array(t), np.array([celsius]) + 273.15
+    n = np.arange(len(t))
+    grid = Grid(t, np.full(len(t), -1), t * 0.0, t * 0.0 + t[-1], np.full(len(t), fill_value=True), n, n)
+    return Figures((WEB,), grid, value, np.full(value.shape, band), np.zeros(value.shape), np.full(value.shape, 2.0))
+
+
+WEB = Key("gauge", "web")
+
+
 def test_peak_gives_no_span_without_a_band():
-    assert peak_text(METRIC, Peak(373.15, 1.0, 600.0, 540.0, 720.0)) == ("100.0 ± 1.0 °C", "10.0 (9.0 to 12.0) min")
-    assert peak_text(METRIC, Peak(373.15, math.inf, 600.0, 0.0, 1800.0)) == ("100.0 °C, no band", "10 min")
+    times, values = [0.0, 540.0, 600.0, 720.0, 1800.0], [20.0, 98.5, 100.0, 98.5, 50.0]
+    told = peak_text(METRIC, history(times, values, 1.0), WEB, lowest=False)
+    assert told == ("100.0 ± 1.0 °C", "10.0 (9.0 to 12.0) min")
+    told = peak_text(METRIC, history(times, values, math.inf), WEB, lowest=False)
+    assert told == ("100.0 °C, no band", "10.00 min")
+
+
+@pytest.mark.parametrize("first", [7.6294e-05 * 60.0, 0.00011444 * 60.0])
+def test_extreme_in_the_first_step_of_one_run_is_at_the_start(first):
+    told = history([0.0, first, 60000.0], [20.0, 19.999999, 90.0], math.inf)
+    assert peak_text(METRIC, told, WEB, lowest=True) == ("20.0 °C, no band", "the start")
+
+
+def test_instant_without_a_band_has_no_more_digits_than_the_clock_is_worth():
+    assert METRIC.instant(841.25 * 60.0, (0.0, 1080.0 * 60.0)) == "841 min"
+    assert METRIC.instant(8.4125 * 60.0, (0.0, 10.0 * 60.0)) == "8.41 min"
+    assert METRIC.instant(0.0, (-600.0, 600.0)) == "0.00 min"  # the clock began before nought
+
+
+def test_extreme_that_the_band_cannot_tell_from_the_start_is_at_the_start():
+    times = [0.0, 120.0, 780.0, 1800.0]
+    told = history(times, [20.0, 19.999, 20.01, 90.0], 0.008)
+    assert peak_text(METRIC, told, WEB, lowest=True) == ("19.999 ± 0.008 °C", "the start (or up to 13.00 min)")
+    told = history(times, [20.0, 21.0, 22.0, 90.0], 0.008)
+    assert peak_text(METRIC, told, WEB, lowest=True)[1] == "the start"
+    told = history(times, [20.0, 15.0, 22.0, 90.0], 0.008)
+    assert peak_text(METRIC, told, WEB, lowest=True)[1] == "2 min"
+
+
+def test_stretches_are_named_in_the_dockets_units():
+    label = stretch_label(Stretch(region="insulating brick", start=(0.5, -1e-7), end=(0.5, 0.114)))
+    assert METRIC.words(f"rim on {label}") == "rim on insulating brick, (500, -0.0001) to (500, 114) mm"
+    assert METRIC.words("deck.top") == "deck.top"
 
 
 def test_inputs_are_written_whole():

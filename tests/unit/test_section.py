@@ -424,7 +424,7 @@ def test_touch_in_one_point_is_noted():
     (note,) = plan.notes
     assert 'region "a"' in note
     assert 'region "b"' in note
-    assert "x = 1 m, y = 1 m" in note
+    assert "at (1, 1) m" in note
 
 
 def test_discs_that_touch_are_noted_and_no_gap():

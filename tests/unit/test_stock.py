@@ -129,13 +129,13 @@ def test_source_of_a_property_is_its_own_then_the_stocks():
 @pytest.mark.parametrize(
     ("changes", "place", "says"),
     [
-        ({"conductivity": 0}, "conductivity.value", "conductivity > 0"),
+        ({"conductivity": 0}, "conductivity.value", "conductivity above 0"),
         ({"conductivity": "7,5"}, "conductivity.value", "decimal point"),
         ({"conductivity": "20 7,5\n30 8"}, "conductivity", "decimal point"),
         ({"conductivity": "20 1 2\n30 8 3"}, "conductivity", "two cells"),
         ({"conductivity": [[300, 1.0]]}, "conductivity", "two rows"),
         ({"conductivity": [[300, 1.0], [300, 2.0]]}, "conductivity", "row 2 is not above row 1"),
-        ({"conductivity": [[300, 1.0], [400, -2.0]]}, "conductivity.table.1.1", "conductivity > 0"),
+        ({"conductivity": [[300, 1.0], [400, -2.0]]}, "conductivity.table.1.1", "conductivity above 0"),
         ({"conductivity": {"value": 1.0, "table": [[300, 1.0], [400, 2.0]]}}, "conductivity", "exactly one"),
         ({"conductivity": {}}, "conductivity", "exactly one"),
         ({"conductivity": {"value": 1.0, "tabel": 2}}, "conductivity.tabel", '"table"'),
