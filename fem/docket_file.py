@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from fem.atomic import whole_file
-from fem.docket import Docket, as_meant
+from fem.docket import FILE_KEYS, Docket, as_meant
 from fem.docket_form import FORMAT, changed
 from fem.docket_text import merged, new_text
 from fem.docket_zip import MAX_TEXT, SUFFIX, open_zip, zip_bytes
@@ -133,6 +133,10 @@ def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[s
     for key in ("title", "units"):
         if key in data:
             problems.append(Problem(key, shown(data.pop(key)), f"{key} inside [docket]", "move it there"))
+    for key in data:
+        if key in Docket.model_fields and key not in FILE_KEYS:  # "gauges": Python's name for what a file calls gauge
+            allowed, hint = unknown_key(key, FILE_KEYS)
+            problems.append(Problem(key, shown(data[key]), allowed, hint))
     return FileUnits(**units), head.get("title", ""), sorted(problems, key=lambda p: p.place), data
 
 

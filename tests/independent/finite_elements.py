@@ -1,10 +1,11 @@
-"""The same job by NGSolve: its own mesh, quadratic elements, consistent mass, implicit Euler with Richardson extrapolation.
+"""The same job by NGSolve: its own mesh, elements of higher order, consistent mass, implicit Euler with Richardson extrapolation.
 
 Extrapolating one step against two halves is second order and damps stiff parts (Hairer and Wanner, Solving Ordinary Differential
 Equations II, IV.9). Temperatures are in degC.
 """
 
 from collections.abc import Callable
+from itertools import pairwise
 
 import netgen.occ as occ
 import ngsolve as ng
@@ -198,7 +199,7 @@ class Run:
             ends = np.linspace(0.0, 1.0, parts + 1)
             if n == 0:
                 ends = np.unique(np.concatenate((ends, ends[1] * np.geomspace(1e-3, 1.0, 8 * parts))))
-            for a, b in zip(ends[:-1], ends[1:], strict=True):
+            for a, b in pairwise(ends.tolist()):
                 self.step(job.begin + (n + a) * job.every, (b - a) * job.every)
             rows.append([self.T(place) for place in places])
         return np.array(rows).T

@@ -444,6 +444,7 @@ TOP_KEYS = {
         ('[stock."my brick"]', '[stok."my brick"]', "stock"),
         ("[[gauge]]", "[[gaug]]", "gauge"),
         ("[clock]", "[clok]", "clock"),
+        ("[[gauge]]", "[[gauges]]", "gauge"),
     ],
 )
 def test_misspelt_table_is_one_fault_and_lists_what_a_file_may_hold(deck, old, new, meant):

@@ -246,3 +246,13 @@ def test_unknown_unit_is_a_value_error():
     for unit, kind in (("kg", "length"), ("K", "heat"), ("blah", "time")):
         with pytest.raises(ValueError, match=r"unknown|plain number|not a unit"):
             scale_of(unit, kind)
+
+
+def test_bounds_read_as_a_sentence():
+    """0 K is -273.15 degC and -459.67 degF: SI brochure, 9th edition, 2.3.1, and the definition of the Fahrenheit scale."""
+    celsius, fahrenheit = (Quantity("temperature").allowed(FileUnits("mm", "min", unit)) for unit in ("degC", "degF"))
+    assert celsius.startswith("a temperature not below absolute zero (-273.15 degC), up to 99726")
+    assert "<" not in celsius + fahrenheit
+    assert "(-459.67 degF)" in fahrenheit
+    assert Quantity("conductivity").allowed() == "conductivity above 0, up to 1e+06 W/(m K)"
+    assert Quantity("fraction").allowed() == "fraction from 0 to 1"
