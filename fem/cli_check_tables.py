@@ -6,7 +6,8 @@ from rich.console import Console
 from rich.text import Text
 
 from fem.cli_tables import plain_table, under
-from fem.numbers import plain, sign
+from fem.numbers import sign
+from fem.rounding import plain
 
 Entry = dict[str, Any]
 

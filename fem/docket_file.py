@@ -133,11 +133,14 @@ def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[s
     for key in ("title", "units"):
         if key in data:
             problems.append(Problem(key, shown(data.pop(key)), f"{key} inside [docket]", "move it there"))
-    for key in data:
-        if key in Docket.model_fields and key not in FILE_KEYS:  # "gauges": Python's name for what a file calls gauge
-            allowed, hint = unknown_key(key, FILE_KEYS)
-            problems.append(Problem(key, shown(data[key]), allowed, hint))
+    problems += _python_names(data)
     return FileUnits(**units), head.get("title", ""), sorted(problems, key=lambda p: p.place), data
+
+
+def _python_names(data: dict[str, Any]) -> list[Problem]:
+    """Return the problems of keys that stand in Python only: ``gauges`` is called ``gauge`` in a file."""
+    found = [key for key in data if key in Docket.model_fields and key not in FILE_KEYS]
+    return [Problem(key, shown(data[key]), *unknown_key(key, FILE_KEYS)) for key in found]
 
 
 def _lost_paths(data: dict[str, Any]) -> list[Problem]:

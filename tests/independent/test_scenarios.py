@@ -93,5 +93,5 @@ def test_kiln_car_deck(tmp_path):
     changes += [
         (rf'^name = "{name}"\nstock', f'name = "{name}"\nstart = {start}\nstock') for name, start in starts.items()
     ]
-    sizes = {"beam": 0.004, "bearer": 0.008, "deck": 0.008}
-    check(changed(tmp_path, "kiln-car-deck", changes), sizes, 0.014, parts=2, skip=3, order=3)
+    sizes = {"beam": 0.004, "bearer": 0.008, "deck": 0.012}
+    check(changed(tmp_path, "kiln-car-deck", changes), sizes, 0.014, parts=4, skip=3, order=3)

@@ -12,7 +12,8 @@ from fem.bands import Grid
 from fem.docket import Stretch
 from fem.figures import Figures
 from fem.history import Key
-from fem.numbers import Writer, peak_text, rounded, series_text, span
+from fem.numbers import Writer, peak_text, series_text
+from fem.rounding import rounded, span
 from fem.section import stretch_label
 from fem.units import FileUnits
 
