@@ -12,6 +12,7 @@ from pathlib import Path
 import ngsolve as ng
 import numpy as np
 import pytest
+from scipy.ndimage import maximum_filter1d
 
 from fem.docket_file import read_docket
 from fem.history import Key
@@ -21,6 +22,7 @@ from tests.independent.job import Job, read
 
 SCENARIOS = Path(__file__).parents[2] / "scenarios"
 Changes = list[tuple[str, str]]
+NEARBY = 2  # reporting times
 
 RAW_LOGS = (
     r", thin = [\d.]+",
@@ -53,11 +55,14 @@ def ours(path: Path, job: Job) -> tuple[np.ndarray, np.ndarray]:
 
 
 def theirs(job: Job, size: Callable[[str], float], parts: int, order: int) -> tuple[np.ndarray, np.ndarray]:
-    """Return the library's values, degC, and their error: what halving cells and steps still changes."""
+    """Return the library's values, degC, and their error: the most that halving cells and steps still changes nearby in time.
+
+    Nearby, two reporting times either way, since a difference of two runs crosses zero where neither is exact.
+    """
     ng.ngsglobals.msg_level = 0
     coarse = Run(job, mesh_of(job, lambda name: 2.0 * size(name)), order=order).march(parts)
     fine = Run(job, mesh_of(job, size), order=order).march(2 * parts)
-    return fine, np.abs(fine - coarse)
+    return fine, maximum_filter1d(np.abs(fine - coarse), 2 * NEARBY + 1, axis=1)
 
 
 def check(path: Path, sizes: dict[str, float], other: float, parts: int, skip: int, order: int = 2) -> None:
@@ -88,10 +93,10 @@ def test_kiln_car_deck(tmp_path):
 
     Cubic elements: the corners of steel in castable ask for them.
     """
-    starts = {"deck": 700, "brick": 450, "bearer": 250, "beam": 250}
+    starts = {"deck": 700, "brick": 350, "bearer": 250, "beam": 250}
     changes = [RAW_LOGS, (r"^end = 1080", "begin = 715\nend = 765"), (r"^gauges = 3", "gauges = 5")]
     changes += [
         (rf'^name = "{name}"\nstock', f'name = "{name}"\nstart = {start}\nstock') for name, start in starts.items()
     ]
-    sizes = {"beam": 0.004, "bearer": 0.008, "deck": 0.012}
-    check(changed(tmp_path, "kiln-car-deck", changes), sizes, 0.014, parts=4, skip=3, order=3)
+    sizes = {"beam": 0.005, "bearer": 0.008, "deck": 0.009}
+    check(changed(tmp_path, "kiln-car-deck", changes), sizes, 0.02, parts=5, skip=4, order=3)
