@@ -10,16 +10,16 @@ import numpy as np
 from threadpoolctl import threadpool_limits
 
 from fem.docket import Docket
-from fem.judge import Judgement, judge
-from fem.march import Outcome
-from fem.mesh import make_mesh
-from fem.pose import Posed, pose
-from fem.record import Record, TurnNote
-from fem.recording import record_of
-from fem.run import Run
-from fem.study import Bench, Progress, Stopped, Study, TooDear
-from fem.tell import found_text
-from fem.turns import Turner, take
+from fem.earn.judge import Judgement, judge
+from fem.earn.pose import Posed, pose
+from fem.earn.recording import record_of
+from fem.earn.tell import found_text
+from fem.earn.turns import Turner, take
+from fem.mesh.make import make_mesh
+from fem.results.record import Record, TurnNote
+from fem.runs.study import Bench, Progress, Stopped, Study, TooDear
+from fem.solve.march import Outcome
+from fem.solve.run import Run
 
 OnProgress = Callable[[Progress], None]
 OnTurn = Callable[[TurnNote], None]

@@ -4,7 +4,7 @@ from collections.abc import Callable
 
 from fem.checks import corners, extremes, first_transient, ledger, mesh_quality, order, outcome, stock_range
 from fem.checks.facts import Facts
-from fem.findings import Finding
+from fem.results.findings import Finding
 
 CHECKS: tuple[Callable[[Facts], list[Finding]], ...] = (
     outcome.check,

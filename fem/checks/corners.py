@@ -9,8 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.checks.facts import Facts
-from fem.doubt import map_doubt
-from fem.findings import Finding
+from fem.results.findings import Finding
+from fem.runs.doubt import map_doubt
 
 Floats = NDArray[np.float64]
 

@@ -8,12 +8,12 @@ Heat made or flux into the section lifts the upper bound only, heat taken out th
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.bands import NARROWEST
 from fem.checks.facts import Facts
-from fem.findings import Finding
-from fem.history import TEMPERATURES
 from fem.laws import Law
-from fem.problem import Face
+from fem.results.bands import NARROWEST
+from fem.results.findings import Finding
+from fem.results.history import TEMPERATURES
+from fem.solve.problem import Face
 
 Floats = NDArray[np.float64]
 

@@ -5,11 +5,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.figures import Figures
-from fem.history import Key
-from fem.problem import Problem
-from fem.run import Gauges
-from fem.study import Study
+from fem.results.figures import Figures
+from fem.results.history import Key
+from fem.runs.study import Study
+from fem.solve.problem import Problem
+from fem.solve.run import Gauges
 
 Floats = NDArray[np.float64]
 

@@ -3,8 +3,8 @@
 import numpy as np
 
 from fem.checks.facts import Facts
-from fem.findings import Finding
-from fem.locate import interpolation
+from fem.mesh.locate import interpolation
+from fem.results.findings import Finding
 
 
 def check(facts: Facts) -> list[Finding]:

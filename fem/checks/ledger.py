@@ -3,9 +3,9 @@
 import numpy as np
 
 from fem.checks.facts import Facts
-from fem.findings import Finding
-from fem.ledger import Ledger
-from fem.run import Run
+from fem.results.findings import Finding
+from fem.results.ledger import Ledger
+from fem.solve.run import Run
 
 CLOSES = 1e-6
 """Part of the heat turned over that may stay unexplained. The discrete balance is exact but for what Newton's method leaves."""

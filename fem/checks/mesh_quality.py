@@ -2,9 +2,9 @@
 
 import numpy as np
 
-from fem.assembly import Assembly
 from fem.checks.facts import Facts
-from fem.findings import Finding
+from fem.results.findings import Finding
+from fem.solve.assembly import Assembly
 
 FLATTEST = 10.0
 """Degrees; below it interpolation constants grow beyond about six times those of the equilateral cell (1/sin of the angle)."""

@@ -2,10 +2,10 @@
 
 import numpy as np
 
-from fem.bands import ASYMPTOTIC, NARROWEST, ORDER_LOW
 from fem.checks.facts import Facts
-from fem.findings import Finding
-from fem.history import Key
+from fem.results.bands import ASYMPTOTIC, NARROWEST, ORDER_LOW
+from fem.results.findings import Finding
+from fem.results.history import Key
 
 MATTERS = 0.1
 """An odd order is worth a word only where the band is more than this part of the wanted one."""

@@ -1,8 +1,8 @@
 """Did every run reach its end?"""
 
 from fem.checks.facts import Facts
-from fem.findings import Finding
-from fem.march import Outcome
+from fem.results.findings import Finding
+from fem.solve.march import Outcome
 
 
 def check(facts: Facts) -> list[Finding]:

@@ -3,7 +3,7 @@
 import numpy as np
 
 from fem.checks.facts import Facts, RegionStock
-from fem.findings import Finding
+from fem.results.findings import Finding
 
 ROUNDING = 1e-6
 

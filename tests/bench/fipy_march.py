@@ -8,10 +8,10 @@ import fipy
 import numpy as np
 
 from fem.docket import Clock, Docket, Exposure, Gauge, Region, Section, Start, Vertex
-from fem.history import Key
-from fem.mesh import Mesh
-from fem.pose import Posed, pose
-from fem.run import run
+from fem.earn.pose import Posed, pose
+from fem.mesh.make import Mesh
+from fem.results.history import Key
+from fem.solve.run import run
 from fem.stock import Stock
 from tests.bench.quench import mesh_near
 from tests.bench.rows import Row, cpu, ratio

@@ -4,8 +4,8 @@ import time
 
 import numpy as np
 
-from fem.conduction import Conduction
-from fem.march import March, StageSolver
+from fem.solve.conduction import Conduction
+from fem.solve.march import March, StageSolver
 from tests.bench.quench import END, equal_steps, mesh_near, posed
 from tests.bench.rows import Row, cpu, ratio
 

@@ -4,11 +4,11 @@ import netgen.meshing as nm
 import ngsolve as ng
 import numpy as np
 
-from fem.conduction import Conduction
-from fem.march import March
-from fem.mesh import Mesh
-from fem.problem import Problem
-from fem.stepping import SDIRK4
+from fem.mesh.make import Mesh
+from fem.solve.conduction import Conduction
+from fem.solve.march import March
+from fem.solve.problem import Problem
+from fem.solve.stepping import SDIRK4
 from tests.bench.quench import COLD, CORE, END, FILM, SLAB, ambient, equal_steps, mesh_near, posed
 from tests.bench.rows import Row, cpu, ratio
 

@@ -5,10 +5,10 @@ from dataclasses import replace
 import numpy as np
 
 from fem.docket import Clock, Docket, Exposure, Film, Gauge, Region, Section, Start, Vertex, Wanted
-from fem.mesh import Mesh, make_mesh
-from fem.pose import Posed, pose
-from fem.refine import uniform
-from fem.stepping import Steps
+from fem.earn.pose import Posed, pose
+from fem.mesh.make import Mesh, make_mesh
+from fem.mesh.refine import uniform
+from fem.solve.stepping import Steps
 from fem.stock import Stock
 
 END = 7200.0  # s

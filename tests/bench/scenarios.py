@@ -2,8 +2,8 @@
 
 from pathlib import Path
 
-from fem.docket_file import read_docket
-from fem.record import Record
+from fem.docket.file import read_docket
+from fem.results.record import Record
 from fem.vouch import look, vouch
 from tests.bench.rows import Row
 

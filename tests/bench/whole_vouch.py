@@ -3,7 +3,7 @@
 import time
 from statistics import median
 
-from fem.mesh import make_mesh
+from fem.mesh.make import make_mesh
 from fem.vouch import vouch
 from tests.bench.quench import docket, posed
 from tests.bench.rows import Row

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from fem.history import Key
+from fem.results.history import Key
 from fem.vouch import vouch
 from tests.exact.test_slab import ALPHA, assert_holds
 from tests.support.cases import box, docket_of, region

@@ -3,8 +3,8 @@
 import numpy as np
 import pytest
 
-from fem.history import Key
-from fem.problem import STEFAN_BOLTZMANN
+from fem.results.history import Key
+from fem.solve.problem import STEFAN_BOLTZMANN
 from fem.vouch import vouch
 from tests.support.cases import BRICK, box, docket_of, region, slab_docket
 from tests.support.series import half_space_flux, slab_film, slab_flux, slab_held

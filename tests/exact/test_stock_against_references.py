@@ -15,7 +15,7 @@ from ht.insulation import ASHRAE, ASHRAE_k, building_materials, refractories
 from thermo.heat_capacity import HeatCapacitySolid
 from thermo.thermal_conductivity import ThermalConductivitySolid
 
-from fem.stock import PROPERTIES, library
+from fem.stock.models import PROPERTIES, library
 
 LIBRARY = library()
 ZERO = 273.15

@@ -7,7 +7,7 @@ from chemicals.volume import rho_data_CRC_inorg_s_const
 from CoolProp.CoolProp import PropsSI
 from thermo.heat_capacity import HeatCapacitySolid
 
-from fem.stock import PROPERTIES, library
+from fem.stock.models import PROPERTIES, library
 
 LIBRARY = library()
 ZERO = 273.15

@@ -3,8 +3,8 @@
 import numpy as np
 import pytest
 
-from fem.history import Key
-from fem.problem import STEFAN_BOLTZMANN
+from fem.results.history import Key
+from fem.solve.problem import STEFAN_BOLTZMANN
 from fem.vouch import vouch
 from tests.exact.test_slab import assert_holds
 from tests.support.cases import BRICK, box, docket_of, region

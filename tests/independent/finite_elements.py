@@ -15,7 +15,7 @@ from tests.independent.job import Job
 
 SIGMA = 5.670374419e-8  # W/(m2 K4), CODATA 2018
 ZERO = 273.15  # K
-NEWTON = 1e-7  # K
+NEWTON = 1e-5  # K, of changes that shrink by ten and more a round
 ROUNDS = 40
 
 

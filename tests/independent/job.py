@@ -11,7 +11,7 @@ import numpy as np
 
 SECONDS = {"s": 1.0, "min": 60.0, "h": 3600.0}
 METRES = {"mm": 1e-3, "cm": 1e-2, "m": 1.0}
-STOCKS = Path(__file__).parents[2] / "fem" / "stock_data"
+STOCKS = Path(__file__).parents[2] / "fem" / "stock" / "data"
 Value = Callable[[float], float]
 Rows = list[tuple[float, float]]
 

@@ -14,8 +14,8 @@ import numpy as np
 import pytest
 from scipy.ndimage import maximum_filter1d
 
-from fem.docket_file import read_docket
-from fem.history import Key
+from fem.docket.file import read_docket
+from fem.results.history import Key
 from fem.vouch import vouch
 from tests.independent.finite_elements import ZERO, Run, mesh_of
 from tests.independent.job import Job, read
@@ -89,12 +89,12 @@ def test_cold_store_corner(tmp_path):
 
 @pytest.mark.slow
 def test_kiln_car_deck(tmp_path):
-    """Radiation, k(T), c(T): fifty minutes around the opening of the door, from a start that is made up.
+    """Radiation, k(T), c(T): three quarters of an hour around the opening of the door, from a start that is made up.
 
     Cubic elements: the corners of steel in castable ask for them.
     """
     starts = {"deck": 700, "brick": 350, "bearer": 250, "beam": 250}
-    changes = [RAW_LOGS, (r"^end = 1080", "begin = 715\nend = 765"), (r"^gauges = 3", "gauges = 5")]
+    changes = [RAW_LOGS, (r"^end = 1080", "begin = 715\nend = 760"), (r"^gauges = 3", "gauges = 5")]
     changes += [
         (rf'^name = "{name}"\nstock', f'name = "{name}"\nstart = {start}\nstock') for name, start in starts.items()
     ]

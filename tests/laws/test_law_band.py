@@ -4,7 +4,7 @@ import numpy as np
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fem.history import Key
+from fem.results.history import Key
 from tests.support.cases import facts_of, gauges_at
 from tests.support.grids import face, problem_on, strip
 from tests.support.jobs import FEW

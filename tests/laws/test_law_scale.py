@@ -6,13 +6,13 @@ import numpy as np
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fem.docket_file import read_text
-from fem.history import Key
+from fem.docket.file import read_text
 from fem.laws import as_law
-from fem.log_folder import LogFolder
-from fem.march import Outcome
-from fem.problem import Film
-from fem.run import run
+from fem.results.history import Key
+from fem.schedules.log_folder import LogFolder
+from fem.solve.march import Outcome
+from fem.solve.problem import Film
+from fem.solve.run import run
 from fem.vouch import vouch
 from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on

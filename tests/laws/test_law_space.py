@@ -6,7 +6,7 @@ import numpy as np
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fem.history import Key
+from fem.results.history import Key
 from fem.vouch import vouch
 from tests.support.cases import BRICK, box, docket_of, region
 from tests.support.grids import box_plan, curves_of, grid_mesh

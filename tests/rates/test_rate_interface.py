@@ -2,11 +2,11 @@
 
 import numpy as np
 
-from fem.mesh import make_mesh
-from fem.refine import uniform
-from fem.run import run
-from fem.steady import solve_steady
-from fem.stepping import Steps
+from fem.mesh.make import make_mesh
+from fem.mesh.refine import uniform
+from fem.solve.run import run
+from fem.solve.steady import solve_steady
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import box_plan, face, problem_on, strip
 from tests.support.order import assert_order

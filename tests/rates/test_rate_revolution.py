@@ -3,12 +3,12 @@
 import numpy as np
 from scipy.special import j0, j1, jn_zeros
 
-from fem.mesh import make_mesh
-from fem.refine import uniform
-from fem.run import run
-from fem.section import build_plan
-from fem.steady import solve_steady
-from fem.stepping import Steps
+from fem.mesh.make import make_mesh
+from fem.mesh.refine import uniform
+from fem.section.build import build_plan
+from fem.solve.run import run
+from fem.solve.steady import solve_steady
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on, square
 from tests.support.order import assert_order

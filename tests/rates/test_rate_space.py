@@ -8,14 +8,14 @@ named at each test. Time errors are kept far below by many steps of a fourth-ord
 import numpy as np
 import pytest
 
-import fem.refine
-from fem.history import Key
-from fem.mesh import make_mesh
-from fem.refine import uniform
-from fem.run import run
-from fem.section import build_plan
-from fem.steady import solve_steady
-from fem.stepping import Steps
+import fem.mesh.refine
+from fem.mesh.make import make_mesh
+from fem.mesh.refine import uniform
+from fem.results.history import Key
+from fem.section.build import build_plan
+from fem.solve.run import run
+from fem.solve.steady import solve_steady
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import box_plan, face, grid_mesh, problem_on, square, strip
 from tests.support.order import assert_order, observed_orders
@@ -145,8 +145,8 @@ def test_arcs_converge_at_order_two():
 
 def test_arcs_cut_as_straight_chords_do_not_converge(monkeypatch):
     """Teeth of the test above: without the new nodes on the true arc no refinement sees the geometry's error."""
-    monkeypatch.setattr(fem.refine, "_onto_arcs", lambda *_: None)
-    monkeypatch.setattr(fem.refine, "verify", lambda _: None)
+    monkeypatch.setattr(fem.mesh.refine, "_onto_arcs", lambda *_: None)
+    monkeypatch.setattr(fem.mesh.refine, "verify", lambda _: None)
     errors, _ = annulus_errors()
     assert observed_orders(errors)[-1] < 1.0
 

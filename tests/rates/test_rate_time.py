@@ -9,12 +9,12 @@ import numpy as np
 from scipy.integrate import solve_ivp
 from scipy.linalg import expm
 
-import fem.stepping
-from fem.conduction import Conduction
+import fem.solve.stepping
 from fem.laws import Break, Law
-from fem.march import Outcome
-from fem.run import run
-from fem.stepping import Steps
+from fem.solve.conduction import Conduction
+from fem.solve.march import Outcome
+from fem.solve.run import run
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on, strip
 from tests.support.order import assert_order, observed_orders
@@ -139,7 +139,7 @@ def test_landing_on_a_jump_keeps_order_four():
 
 def test_reading_the_value_after_a_jump_too_early_drops_the_order_to_one(monkeypatch):
     """Teeth of the test above: the last stage before the jump must not see the value after it."""
-    monkeypatch.setattr(fem.stepping, "INSIDE", 0.0)
+    monkeypatch.setattr(fem.solve.stepping, "INSIDE", 0.0)
     mesh, problem = jumping()
     errors = march_errors(mesh, problem, jump_reference(mesh, problem), (16, 32, 64, 128), problem.breaks())
     assert observed_orders(errors)[-1] < 1.5, errors

@@ -11,10 +11,10 @@ import numpy as np
 from matplotlib.tri import LinearTriInterpolator, Triangulation
 
 from fem.docket import Clock, Docket, Exposure, Film, Gauge, Radiant, Region, Section, Start, Vertex, Wanted
-from fem.history import Key
 from fem.laws import Law
-from fem.problem import STEFAN_BOLTZMANN
-from fem.record import Record
+from fem.results.history import Key
+from fem.results.record import Record
+from fem.solve.problem import STEFAN_BOLTZMANN
 from fem.stock import Stock
 from fem.vouch import vouch
 from tests.reference.geometry import shapes_of

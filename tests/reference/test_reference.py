@@ -187,7 +187,7 @@ def test_a_hole_that_another_region_fills_is_drawn_before_it():
         "edges": [{"id": "o", "curves": ["ab", "bc", "cd", "da"], "conditions": [{"type": "temperature", "value": 5.0}]}],
         "initial": {}, "analysis": {"type": "steady"}, "expected": [],
     }  # fmt: skip
-    from fem.section import plan_of
+    from fem.section.build import plan_of
 
     plan = plan_of(Case(case).docket())
     assert dict(zip(plan.region_names, plan.region_area, strict=True)) == pytest.approx({"core": 1.0, "shell": 8.0})

@@ -17,12 +17,12 @@ from numpy.typing import NDArray
 from scipy.integrate import solve_ivp
 
 from fem.docket import Docket
-from fem.docket_file import read_docket
-from fem.history import Key
+from fem.docket.file import read_docket
 from fem.laws import Law
-from fem.record import Record
-from fem.schedules import law_of
-from fem.verdicts import Call
+from fem.results.history import Key
+from fem.results.record import Record
+from fem.results.verdicts import Call
+from fem.schedules.models import law_of
 from fem.vouch import look, vouch
 
 Floats = NDArray[np.float64]

@@ -6,11 +6,11 @@ import numpy as np
 
 from fem.checks.facts import Facts, Goal, Namer, RegionStock
 from fem.docket import Clock, Docket, Exposure, Gauge, Region, Section, Start, Wanted
-from fem.history import Key
-from fem.run import Gauges
+from fem.results.history import Key
+from fem.runs.study import Bench
+from fem.runs.tables import figures
+from fem.solve.run import Gauges
 from fem.stock import Stock
-from fem.study import Bench
-from fem.tables import figures
 
 BRICK = {"conductivity": 1.0, "density": 2000.0, "specific_heat": 900.0}
 

@@ -5,9 +5,9 @@ import itertools
 import numpy as np
 
 from fem.laws import as_law
-from fem.mesh_data import Mesh
-from fem.problem import Face, Film, Problem, Radiant
-from fem.section import build_plan
+from fem.mesh.data import Mesh
+from fem.section.build import build_plan
+from fem.solve.problem import Face, Film, Problem, Radiant
 from tests.support.shapes import rect
 
 

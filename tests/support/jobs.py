@@ -6,11 +6,11 @@ import numpy as np
 from hypothesis import HealthCheck, Phase, settings
 from hypothesis import strategies as st
 
-from fem.march import Outcome
-from fem.mesh_data import Mesh
-from fem.problem import Problem
-from fem.run import run
-from fem.stepping import Steps
+from fem.mesh.data import Mesh
+from fem.solve.march import Outcome
+from fem.solve.problem import Problem
+from fem.solve.run import run
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import box_plan, face, grid_mesh, problem_on
 

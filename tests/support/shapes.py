@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 
-from fem.section import Outline, OutlineEdge
+from fem.section.build import Outline, OutlineEdge
 
 Point = tuple[float, float]
 

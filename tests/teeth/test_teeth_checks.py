@@ -18,13 +18,13 @@ from fem.checks import (
     stock_range,
 )
 from fem.checks.facts import Goal, RegionStock
-from fem.conduction import Conduction
-from fem.history import Key
-from fem.march import March, Outcome
-from fem.mesh import make_mesh
-from fem.run import run
-from fem.section import build_plan
-from fem.study import Bench
+from fem.mesh.make import make_mesh
+from fem.results.history import Key
+from fem.runs.study import Bench
+from fem.section.build import build_plan
+from fem.solve.conduction import Conduction
+from fem.solve.march import March, Outcome
+from fem.solve.run import run
 from fem.vouch import vouch
 from tests.support.cases import facts_of, gauges_at, slab_docket, with_finest
 from tests.support.grids import box_plan, face, grid_mesh, problem_on, square, strip

@@ -3,13 +3,13 @@
 import numpy as np
 import pytest
 
-from fem.conduction import Conduction
 from fem.docket import Allowance, Limit
-from fem.history import Key
 from fem.laws import Break, Law
-from fem.march import March, Outcome
-from fem.run import run
-from fem.store import load, save
+from fem.results.history import Key
+from fem.results.store import load, save
+from fem.solve.conduction import Conduction
+from fem.solve.march import March, Outcome
+from fem.solve.run import run
 from fem.vouch import look, vouch
 from tests.support.cases import BRICK, gauges_at, slab_docket
 from tests.support.grids import face, problem_on, strip

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from fem.mesh_verify import verify
+from fem.mesh.verify import verify
 from tests.support.cases import gauges_at
 from tests.support.grids import curves_of, square, strip
 from tests.support.order import assert_order, observed_orders

@@ -7,17 +7,17 @@ import numpy as np
 import pytest
 
 from fem.docket import Allowance, Limit, Wanted
-from fem.findings import Finding
-from fem.history import Key
-from fem.judge import judge
-from fem.march import Outcome
-from fem.mesh import make_mesh
-from fem.pose import pose
-from fem.run import run
-from fem.stepping import Steps
-from fem.study import Bench
-from fem.turns import Turner, take
-from fem.verdicts import Call
+from fem.earn.judge import judge
+from fem.earn.pose import pose
+from fem.earn.turns import Turner, take
+from fem.mesh.make import make_mesh
+from fem.results.findings import Finding
+from fem.results.history import Key
+from fem.results.verdicts import Call
+from fem.runs.study import Bench
+from fem.solve.march import Outcome
+from fem.solve.run import run
+from fem.solve.stepping import Steps
 from fem.vouch import vouch
 from tests.support.cases import box, docket_of, region, slab_docket
 from tests.support.series import slab_film

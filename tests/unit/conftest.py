@@ -5,13 +5,13 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from fem.bands import Grid
-from fem.figures import Figures
-from fem.findings import Finding
-from fem.history import Key
-from fem.ledger import Ledger
-from fem.record import Fields, Reason, Record, RecordMesh, TurnNote
-from fem.verdicts import Call, Verdict
+from fem.results.bands import Grid
+from fem.results.figures import Figures
+from fem.results.findings import Finding
+from fem.results.history import Key
+from fem.results.ledger import Ledger
+from fem.results.record import Fields, Reason, Record, RecordMesh, TurnNote
+from fem.results.verdicts import Call, Verdict
 
 HASH = "3f" * 32
 KEYS = (

@@ -3,20 +3,10 @@
 import numpy as np
 import pytest
 
-from fem.bands import (
-    ORDER_HIGH,
-    ORDER_LOW,
-    SAFETY,
-    between_ends,
-    grid_of,
-    report_times,
-    steady_grid,
-    three_levels,
-    time_levels,
-    window_max,
-)
 from fem.laws import Break, Law
-from fem.stepping import Steps
+from fem.results.bands import ORDER_HIGH, ORDER_LOW, SAFETY, between_ends, three_levels, time_levels, window_max
+from fem.runs.grids import grid_of, report_times, steady_grid
+from fem.solve.stepping import Steps
 from tests.support.grids import box_plan, face, problem_on
 
 PLAN = box_plan((0.0, 1.0), 1.0)

@@ -16,18 +16,20 @@ import pytest
 from rich.console import Console
 from typer.testing import CliRunner
 
-from fem import cli, cli_run, store
-from fem.cli_answer import AS_IT_IS, BAD_INPUT, BUG, DONE, INTERRUPTED, OPEN, VOUCHED, answering
-from fem.cli_tables import show_end, show_record
-from fem.cli_watch import Watch
-from fem.docket_file import read_docket
-from fem.docket_hash import content_hash
+from fem.cli import app as cli
+from fem.cli import run as cli_run
+from fem.cli.answer import AS_IT_IS, BAD_INPUT, BUG, DONE, INTERRUPTED, OPEN, VOUCHED, answering
+from fem.cli.tables import show_end, show_record
+from fem.cli.watch import Watch
+from fem.docket.content import content_hash
+from fem.docket.file import read_docket
 from fem.errors import DocketError, Problem, StoreError, SystemLibraryMissing
-from fem.record import TurnNote
+from fem.results import store
+from fem.results.record import TurnNote
+from fem.results.verdicts import Call
 from fem.stock import library
-from fem.verdicts import Call
 
-ROOT = Path(cli.__file__).parents[1]
+ROOT = Path(cli.__file__).parents[2]
 DOCKET = """
 [docket]
 format = 1
@@ -162,7 +164,7 @@ def test_each_example_of_help_has_a_line_of_its_own(words):
 
 def test_reader_that_leaves_early_ends_the_program_quietly():
     """128 + 13 is what a POSIX shell says of a program that SIGPIPE ended (XCU 2.8.2)."""
-    line = f"set -o pipefail; COLUMNS=100 {sys.executable} -m fem.cli stock list --json | head -c 1"
+    line = f"set -o pipefail; COLUMNS=100 {sys.executable} -m fem.cli.app stock list --json | head -c 1"
     told = subprocess.run(["bash", "-c", line], cwd=ROOT, capture_output=True, text=True, check=False)
     assert (told.returncode, told.stdout, told.stderr) == (141, "{", "")
 
@@ -183,7 +185,7 @@ def test_help_comes_within_a_second_and_loads_nothing_heavy():
     took = []
     for _ in range(3):
         began = time.perf_counter()
-        run = [sys.executable, "-X", "importtime", "-m", "fem.cli", "--help"]
+        run = [sys.executable, "-X", "importtime", "-m", "fem.cli.app", "--help"]
         told = subprocess.run(run, cwd=ROOT, capture_output=True, text=True, check=True)
         took.append(time.perf_counter() - began)
     assert min(took) < 1.0
@@ -437,7 +439,7 @@ def test_check_as_json_holds_numbers_in_the_dockets_units(docket):
 
 
 def test_check_documents_every_key(docket):
-    from fem.cli_check import found_in
+    from fem.cli.check import found_in
 
     known = json.loads(call("check", docket, "--json").stdout)
     for key in known:
@@ -483,7 +485,7 @@ def start():
     def begin(*words):
         running.append(
             subprocess.Popen(
-                [sys.executable, "-m", "fem.cli", *map(str, words)],
+                [sys.executable, "-m", "fem.cli.app", *map(str, words)],
                 cwd=ROOT,
                 stdout=subprocess.PIPE,
                 stderr=subprocess.PIPE,
@@ -601,7 +603,7 @@ def test_machine_without_the_library_gets_the_line_and_no_trace(docket, tmp_path
     """As the loader of a bare machine would have it: importing gmsh raises OSError."""
     (tmp_path / "gmsh.py").write_text('raise OSError("libGLU.so.1: cannot open shared object file")')
     path = os.pathsep.join((str(tmp_path), str(ROOT)))
-    words = [sys.executable, "-m", "fem.cli", "look", str(docket)]
+    words = [sys.executable, "-m", "fem.cli.app", "look", str(docket)]
     told = subprocess.run(
         words, cwd=tmp_path, env={**os.environ, "PYTHONPATH": path}, capture_output=True, text=True, check=False
     )

@@ -3,8 +3,8 @@
 import numpy as np
 import pytest
 
-from fem.conduction import Conduction
-from fem.problem import STEFAN_BOLTZMANN
+from fem.solve.conduction import Conduction
+from fem.solve.problem import STEFAN_BOLTZMANN
 from tests.support.grids import face, problem_on, square, strip
 from tests.support.jobs import Job, bar, posed
 

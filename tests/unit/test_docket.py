@@ -26,15 +26,15 @@ from fem.docket import (
     Vertex,
     Wanted,
 )
-from fem.docket_hash import content_hash, is_shelvable
-from fem.docket_limits import NEEDED
+from fem.docket.content import content_hash, is_shelvable
+from fem.docket.limits import NEEDED
 from fem.errors import DocketError
-from fem.kinds import KINDS
 from fem.laws import Law
-from fem.schedule_base import OwnKind
-from fem.schedules import SCHEDULES, Points, Scheduled, law_of
+from fem.quantities.kinds import KINDS
+from fem.quantities.units import FileUnits, Quantity
+from fem.schedules.base import OwnKind
+from fem.schedules.models import SCHEDULES, Points, Scheduled, law_of
 from fem.stock import Stock
-from fem.units import FileUnits, Quantity
 
 SQUARE = ((0.0, 0.0, "bottom"), (1.0, 0.0, "right"), (1.0, 1.0, "top"), (0.0, 1.0, "left"))
 BRICK = Stock(conductivity=1.0, density=2000.0, specific_heat=900.0)
@@ -662,7 +662,7 @@ def test_docket_with_a_callable_is_not_shelvable():
 
 
 def test_import_is_quick():
-    code = "import time; t = time.perf_counter(); import fem.docket; print(time.perf_counter() - t)"
+    code = "import time; t = time.perf_counter(); import fem.docket.models; print(time.perf_counter() - t)"
     code += "; import sys; assert 'pint' not in sys.modules"
     runs = [subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True) for _ in range(2)]
     assert min(float(run.stdout) for run in runs) < 1.2  # 0.25 s on an idle machine; the rest is for a loaded one

@@ -10,15 +10,28 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from fem import docket_zip
-from fem.docket import Clock, Docket, Exposure, Film, Gauge, Limit, Region, Section, Start, Variant, Vertex, Wanted
-from fem.docket_file import logs_of, pack, read_docket, read_text, to_text, update_text, write_docket
-from fem.docket_hash import content_hash
+from fem.docket import (
+    Clock,
+    Docket,
+    Exposure,
+    Film,
+    Gauge,
+    Limit,
+    Region,
+    Section,
+    Start,
+    Variant,
+    Vertex,
+    Wanted,
+)
+from fem.docket import archive as docket_zip
+from fem.docket.content import content_hash
+from fem.docket.file import logs_of, pack, read_docket, read_text, to_text, update_text, write_docket
 from fem.errors import DocketError
-from fem.log_folder import LogFolder
-from fem.schedules import Firing, Points
+from fem.quantities.units import LENGTHS, TEMPERATURES, TIMES, FileUnits
+from fem.schedules.log_folder import LogFolder
+from fem.schedules.models import Firing, Points
 from fem.stock import Stock
-from fem.units import LENGTHS, TEMPERATURES, TIMES, FileUnits
 
 DECK = """\
 # Deck on a steel beam, drawn from the works' sketch
@@ -511,7 +524,7 @@ def test_file_that_is_no_text(deck, monkeypatch):
     with pytest.raises(DocketError) as caught:
         read_docket(deck)
     assert "UTF-8" in str(caught.value)
-    monkeypatch.setattr("fem.docket_file.MAX_TEXT", 1)
+    monkeypatch.setattr("fem.docket.file.MAX_TEXT", 1)
     with pytest.raises(DocketError) as caught:
         read_docket(deck)
     assert "at most 1 bytes" in str(caught.value)

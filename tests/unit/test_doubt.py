@@ -5,9 +5,9 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from fem.doubt import cell_doubt, map_doubt, parents_max, passes_needed, step_doubt
-from fem.history import Key
-from fem.study import split_cells
+from fem.results.history import Key
+from fem.runs.doubt import cell_doubt, map_doubt, parents_max, passes_needed, step_doubt
+from fem.runs.study import split_cells
 from tests.support.cases import facts_of, gauges_at
 from tests.support.grids import face, problem_on, strip
 

@@ -3,8 +3,8 @@
 import numpy as np
 import pytest
 
-from fem.enthalpy import CEILING, STEP, ZERO, ConstantEnthalpy, PlacedEnthalpy, TableEnthalpy, enthalpy
 from fem.laws import as_law
+from fem.solve.enthalpy import CEILING, STEP, ZERO, ConstantEnthalpy, PlacedEnthalpy, TableEnthalpy, enthalpy
 
 T = np.array([200.0, 273.15, 300.0, 812.3, 1500.0])
 NOWHERE = np.zeros(len(T))

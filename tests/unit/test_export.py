@@ -9,11 +9,11 @@ import meshio
 import numpy as np
 import pytest
 
-from fem.cautions import cautions
 from fem.errors import StoreError
-from fem.export import WRITERS, export
-from fem.export_figures import figures_of
-from fem.plain_json import as_json
+from fem.export.figures import figures_of
+from fem.export.write import WRITERS, export
+from fem.results.cautions import cautions
+from fem.results.plain_json import as_json
 
 
 def read_histories(path):

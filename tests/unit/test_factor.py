@@ -5,10 +5,10 @@ import pytest
 import scipy.sparse as sp
 from scipy.sparse.linalg import spsolve
 
-import fem.factor
-from fem.conduction import Conduction
-from fem.factor import KEPT, FactorFailed, Factorizer
-from fem.history import Key
+import fem.solve.factor
+from fem.results.history import Key
+from fem.solve.conduction import Conduction
+from fem.solve.factor import KEPT, FactorFailed, Factorizer
 from fem.vouch import look
 from tests.support.cases import slab_docket
 from tests.support.grids import problem_on, square
@@ -17,9 +17,9 @@ from tests.support.jobs import Job, bar, posed, solved
 
 @pytest.fixture
 def backend(request, monkeypatch):
-    if request.param and not fem.factor.CHOLMOD:
+    if request.param and not fem.solve.factor.CHOLMOD:
         pytest.fail("cvxopt is a dependency: CHOLMOD must be there")
-    monkeypatch.setattr(fem.factor, "CHOLMOD", request.param)
+    monkeypatch.setattr(fem.solve.factor, "CHOLMOD", request.param)
 
 
 def matrix(cells=6, shift=1.0):
@@ -88,13 +88,13 @@ def test_a_run_gives_the_same_answer_without_cholmod(monkeypatch):
     for curved in (False, True):
         mesh, job = bar(), Job(curved=curved)
         with_it = solved(mesh, posed(job, mesh.plan)).frames
-        monkeypatch.setattr(fem.factor, "CHOLMOD", False)
+        monkeypatch.setattr(fem.solve.factor, "CHOLMOD", False)
         without = solved(mesh, posed(job, mesh.plan)).frames
-        monkeypatch.setattr(fem.factor, "CHOLMOD", True)
+        monkeypatch.setattr(fem.solve.factor, "CHOLMOD", True)
         np.testing.assert_allclose(without, with_it, rtol=1e-9)
 
 
 def test_a_whole_look_gives_the_same_answer_without_cholmod(monkeypatch):
     first = look(slab_docket()).figures.series(Key("gauge", "back"))[0]
-    monkeypatch.setattr(fem.factor, "CHOLMOD", False)
+    monkeypatch.setattr(fem.solve.factor, "CHOLMOD", False)
     np.testing.assert_allclose(look(slab_docket()).figures.series(Key("gauge", "back"))[0], first, rtol=1e-9)

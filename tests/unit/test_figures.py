@@ -3,10 +3,10 @@
 import numpy as np
 import pytest
 
-from fem.bands import Grid
 from fem.checks.facts import Goal
-from fem.figures import Figures
-from fem.history import Key
+from fem.results.bands import Grid
+from fem.results.figures import Figures
+from fem.results.history import Key
 
 KEY = Key("gauge", "a")
 

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from fem.history import History, Key, balanced, hermite
+from fem.results.history import History, Key, balanced, hermite
 
 
 def cubic(t):

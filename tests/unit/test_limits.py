@@ -3,12 +3,21 @@
 import numpy as np
 import pytest
 
-from fem.bands import Grid
 from fem.docket import Limit
-from fem.figures import Figures
-from fem.history import Key
-from fem.limits import closing_goal, derived, first_reach, held_level, judge_limit, plain_subject, rate_span, subject
-from fem.verdicts import Call
+from fem.earn.limits import (
+    closing_goal,
+    derived,
+    first_reach,
+    held_level,
+    judge_limit,
+    plain_subject,
+    rate_span,
+    subject,
+)
+from fem.results.bands import Grid
+from fem.results.figures import Figures
+from fem.results.history import Key
+from fem.results.verdicts import Call
 from tests.support.cases import box, docket_of, region, slab_docket
 
 T = np.linspace(0.0, 100.0, 101)

@@ -4,9 +4,9 @@ import numpy as np
 import pytest
 
 from fem.errors import MeshError
-from fem.locate import barycentric, interpolation
-from fem.mesh import make_mesh
-from fem.section import build_plan
+from fem.mesh.locate import barycentric, interpolation
+from fem.mesh.make import make_mesh
+from fem.section.build import build_plan
 from tests.support.grids import square
 from tests.support.shapes import disc
 

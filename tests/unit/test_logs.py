@@ -5,10 +5,10 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fem import log_folder, logs
 from fem.errors import DocketError
-from fem.log_folder import LogFolder
-from fem.logs import MAX_FAULTS, Wanted, read_samples, read_sheet
+from fem.schedules import log_folder, logs
+from fem.schedules.log_folder import LogFolder
+from fem.schedules.logs import MAX_FAULTS, Wanted, read_samples, read_sheet
 
 PLAIN = Wanted("t", "v", "s")
 

@@ -6,12 +6,12 @@ import numpy as np
 import pytest
 from scipy.linalg import expm
 
-from fem.conduction import Conduction
-from fem.history import Key
 from fem.laws import Break, Law
-from fem.march import March, Outcome
-from fem.run import run
-from fem.stepping import Steps
+from fem.results.history import Key
+from fem.solve.conduction import Conduction
+from fem.solve.march import March, Outcome
+from fem.solve.run import run
+from fem.solve.stepping import Steps
 from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on, strip
 from tests.support.jobs import Job, bar, posed, solved

@@ -12,13 +12,13 @@ import numpy as np
 import pytest
 
 from fem.errors import MeshError, SystemLibraryMissing
-from fem.gmsh_session import gmsh_session
-from fem.mesh import make_mesh
-from fem.mesh_data import Mesh
-from fem.mesh_draw import Drawer
-from fem.mesh_quality import quality
-from fem.mesh_verify import bows, verify
-from fem.section import build_plan
+from fem.mesh.data import Mesh
+from fem.mesh.draw import Drawer
+from fem.mesh.gmsh_session import gmsh_session
+from fem.mesh.make import make_mesh
+from fem.mesh.quality import quality
+from fem.mesh.verify import bows, verify
+from fem.section.build import build_plan
 from tests.support.shapes import cells_crossed, disc, outline, rect, ring_sector
 
 T_PROFILE = [
@@ -241,7 +241,7 @@ def test_meshing_leaves_ctrl_c_alone():
 def test_another_process_meshes_in_a_thread_and_prints_nothing():
     code = (
         "import threading\n"
-        "from fem.section import *\nfrom fem.mesh import make_mesh\n"
+        "from fem.section.build import *\nfrom fem.mesh.make import make_mesh\n"
         "plan = build_plan([Outline('a', True, ((0, 0), (1, 0), (0, 1)), (OutlineEdge(),) * 3)])\n"
         "t = threading.Thread(target=make_mesh, args=(plan,)); t.start(); t.join()\n"
     )
@@ -276,7 +276,7 @@ def test_missing_system_library_is_told_in_one_line(monkeypatch):
     def absent(name):
         raise OSError("libGLU.so.1: cannot open shared object file: No such file or directory")
 
-    monkeypatch.setattr("fem.gmsh_session.importlib.import_module", absent)
+    monkeypatch.setattr("fem.mesh.gmsh_session.importlib.import_module", absent)
     with pytest.raises(SystemLibraryMissing) as error:
         make_mesh(build_plan([rect("a", 0, 0, 1, 1)]))
     assert "libGLU.so.1" in str(error.value)

@@ -8,14 +8,14 @@ import pytest
 from hypothesis import assume, given
 from hypothesis import strategies as st
 
-from fem.bands import Grid
 from fem.docket import Stretch
-from fem.figures import Figures
-from fem.history import Key
-from fem.numbers import Writer, peak_text, series_text
-from fem.rounding import rounded, span
-from fem.section import stretch_label
-from fem.units import FileUnits
+from fem.quantities.units import FileUnits
+from fem.results.bands import Grid
+from fem.results.figures import Figures
+from fem.results.history import Key
+from fem.results.numbers import Writer, peak_text, series_text
+from fem.results.rounding import rounded, span
+from fem.section.build import stretch_label
 
 METRIC = Writer(FileUnits("mm", "min", "degC"))
 IMPERIAL = Writer(FileUnits("in", "h", "degF"))

@@ -4,9 +4,9 @@ import numpy as np
 import pytest
 
 from fem.docket import Limit, Stretch, Wanted
+from fem.earn.pose import namer, pose
 from fem.errors import DocketError
-from fem.pose import namer, pose
-from fem.units import FileUnits
+from fem.quantities.units import FileUnits
 from tests.support.cases import BRICK, box, docket_of, region, slab_docket
 
 STEEL = {"conductivity": 40.0, "density": 7800.0, "specific_heat": 500.0, "range": (250.0, 900.0)}

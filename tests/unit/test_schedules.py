@@ -8,13 +8,13 @@ from hypothesis import given
 from hypothesis import strategies as st
 from pydantic import BaseModel, ConfigDict, ValidationError
 
-from fem.docket_exposures import Ambient, Coefficient, Emissivity, FluxIn
-from fem.docket_section import StartLike
+from fem.docket.exposures import Ambient, Coefficient, Emissivity, FluxIn
+from fem.docket.regions import StartLike
 from fem.errors import DocketError
 from fem.laws import Break, Law
-from fem.logs import Samples
-from fem.polyline import polyline, thin
-from fem.schedules import (
+from fem.quantities.units import FileUnits, Reading
+from fem.schedules.logs import Samples
+from fem.schedules.models import (
     Daily,
     DailyWave,
     Fire,
@@ -26,7 +26,7 @@ from fem.schedules import (
     span_of,
     varies,
 )
-from fem.units import FileUnits, Reading
+from fem.schedules.polyline import polyline, thin
 
 DAY = 86400.0
 UNITS = FileUnits("mm", "min", "degC")

@@ -7,13 +7,13 @@ import numpy as np
 import pytest
 
 from fem.docket import Docket, Exposure, Region, Section, Start, Stretch
-from fem.edge import Edge, arc_through, crossings, winding
 from fem.errors import SectionError
-from fem.gmsh_session import gmsh_session
-from fem.plan import Plan
-from fem.section import Outline, OutlineEdge, OutlineStretch, build_plan, plan_of, stretch_label
+from fem.mesh.gmsh_session import gmsh_session
+from fem.quantities.units import FileUnits, Reading
+from fem.section.build import Outline, OutlineEdge, OutlineStretch, build_plan, plan_of, stretch_label
+from fem.section.edge import Edge, arc_through, crossings, winding
+from fem.section.plan import Plan
 from fem.stock import Stock
-from fem.units import FileUnits, Reading
 from tests.support.shapes import disc, moved, outline, rect, ring_sector
 
 ROUNDING = 1e-12  # relative: sums of a few dozen float64 terms

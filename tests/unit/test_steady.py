@@ -3,11 +3,11 @@
 import numpy as np
 import pytest
 
-from fem.history import Key
-from fem.march import Outcome
-from fem.problem import STEFAN_BOLTZMANN
-from fem.run import run
-from fem.steady import solve_steady
+from fem.results.history import Key
+from fem.solve.march import Outcome
+from fem.solve.problem import STEFAN_BOLTZMANN
+from fem.solve.run import run
+from fem.solve.steady import solve_steady
 from tests.support.cases import gauges_at
 from tests.support.grids import face, problem_on, strip
 from tests.support.jobs import Job, bar, posed

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from fem.laws import Break
-from fem.stepping import INSIDE, SDIRK4, Ladder, Steps
+from fem.solve.stepping import INSIDE, SDIRK4, Ladder, Steps
 
 
 def test_the_tableau_obeys_the_conditions_of_order_four():

@@ -12,11 +12,11 @@ from pydantic import ValidationError
 
 from fem.errors import DocketError
 from fem.laws import Law
-from fem.properties import SourceKind
-from fem.stock import PROPERTIES, Stock, find, library, nearest, stock_table
-from fem.stock_plot import plot_stock
-from fem.strict import Strict
-from fem.units import FileUnits
+from fem.quantities.strict import Strict
+from fem.quantities.units import FileUnits
+from fem.stock.models import PROPERTIES, Stock, find, library, nearest, stock_table
+from fem.stock.plot import plot_stock
+from fem.stock.properties import SourceKind
 
 CELSIUS = FileUnits(temperature="degC")
 ALL = list(library().values())
@@ -204,7 +204,7 @@ def test_library_names_and_aliases_point_to_one_stock():
 
 def test_library_read_whole_no_name_lost_between_files():
     counted = 0
-    for file in (files("fem") / "stock_data").iterdir():
+    for file in (files("fem.stock") / "data").iterdir():
         if file.name.endswith(".toml"):
             counted += len(tomllib.loads(file.read_text(encoding="utf-8"))["stock"])
     assert counted == len(ALL)
@@ -335,5 +335,5 @@ def test_plot_refuses_a_stock_without_a_range(tmp_path):
 
 def test_plot_takes_a_callable_and_keeps_pyplot_out(tmp_path):
     plot_stock(stock(name="made up", conductivity=lambda T: T / 300, range=(280, 400)), tmp_path / "x.png")
-    code = "import sys, fem.stock_plot; sys.exit('matplotlib.pyplot' in sys.modules)"
+    code = "import sys, fem.stock.plot; sys.exit('matplotlib.pyplot' in sys.modules)"
     assert subprocess.run([sys.executable, "-c", code], check=False).returncode == 0

@@ -3,11 +3,11 @@
 import numpy as np
 import pytest
 
-from fem.history import Key
 from fem.laws import Break, Law
-from fem.run import run
-from fem.stepping import Steps
-from fem.tables import Derived, figures, rows
+from fem.results.history import Key
+from fem.runs.tables import Derived, figures, rows
+from fem.solve.run import run
+from fem.solve.stepping import Steps
 from tests.support.cases import facts_of, gauges_at
 from tests.support.grids import face, problem_on, strip
 

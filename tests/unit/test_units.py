@@ -14,9 +14,9 @@ from pydantic import BaseModel, ValidationError
 from pydantic_core import PydanticCustomError
 
 from fem.errors import DocketError
-from fem.kinds import KINDS
-from fem.unit_text import is_unit_text, tidy_unit
-from fem.units import (
+from fem.quantities.kinds import KINDS
+from fem.quantities.unit_text import is_unit_text, tidy_unit
+from fem.quantities.units import (
     LENGTHS,
     SI,
     TEMPERATURES,

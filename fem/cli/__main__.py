@@ -1,0 +1,5 @@
+"""``python -m fem.cli``."""
+
+from fem.cli.app import main
+
+main()

@@ -1,0 +1,1 @@
+"""The plan to triangles, and to finer triangles."""

@@ -1,0 +1,1 @@
+"""Physical quantities: kinds, spellings and the only conversions of units."""

@@ -1,0 +1,1 @@
+"""What a run left, as plain data: readers of results never solve."""

@@ -1,0 +1,1 @@
+"""Values over time, and the laws that they become."""

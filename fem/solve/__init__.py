@@ -1,0 +1,1 @@
+"""The discrete conduction problem, its march through time and its steady state."""
