@@ -110,5 +110,5 @@ class Assembly:
 
     def _share(self, nodes: Ints, size: Floats) -> Share:
         total: Floats = np.bincount(nodes, weights=size, minlength=self.n).astype(np.float64)
-        owners = np.unique(nodes)
+        owners = np.flatnonzero(np.bincount(nodes, minlength=self.n))
         return Share(owners, total[owners], self.mesh.points[owners, 0], self.mesh.points[owners, 1])
