@@ -1,6 +1,7 @@
 """What to do next: split the cells or the steps that owe most, or stop, and why."""
 
 import time
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -90,20 +91,23 @@ class Turner:
 
     def _offers(
         self, study: Study, judgement: Judgement, bench: Bench, worst: Need, *, stalled: bool
-    ) -> list[Turn | None]:
-        if not study.levels or len(study.levels) < 3:
-            return []
+    ) -> Iterator[Turn | None]:
+        """Yield what might be done, best first; a later offer is worked out only when the earlier ones do not fit."""
+        if len(study.levels) < 3:
+            return
         if study.timing and worst.time > TIME_SHARE * worst.total:
-            return [self._steps(study, bench, worst), self._everywhere(study, bench, worst.goal.why)]
-        everywhere = self._everywhere(study, bench, worst.goal.why)
-        local = self._cells(study, judgement, bench)
-        if local is None or stalled:
-            return [everywhere, local]
-        assert local.mesh is not None  # noqa: S101 - a local offer carries its mesh
-        growth = len(local.mesh.cells) / len(study.levels[0].mesh.cells)
+            yield self._steps(study, bench, worst)
+            yield self._everywhere(study, bench, worst.goal.why)
+            return
+        doubt = self._doubt(study, judgement)
+        passes = passes_needed(doubt, 1.0)
+        growth = float(np.mean(4.0**passes))
         rounds = max(1, int(np.ceil(np.log2(max(worst.space, 1.001)) / 2.0)))
         dearer = WHOLE_STUDY * growth > sum(4**k for k in range(1, rounds + 1))
-        return [everywhere, local] if dearer else [local, everywhere]
+        if stalled or dearer or not passes.any():
+            yield self._everywhere(study, bench, worst.goal.why)
+        yield self._cells(study, bench, doubt)
+        yield self._everywhere(study, bench, worst.goal.why)
 
     def _everywhere(self, study: Study, bench: Bench, why: str) -> Turn | None:
         cells = 4 * len(study.finest.mesh.cells)
@@ -112,9 +116,8 @@ class Turner:
             return None
         return Turn("", f"split every cell ({cells} on the finest mesh), since {why}", "everywhere")
 
-    def _cells(self, study: Study, judgement: Judgement, bench: Bench) -> Turn | None:
+    def _cells(self, study: Study, bench: Bench, doubt: np.ndarray) -> Turn | None:
         mesh = study.levels[0].mesh
-        doubt = self._doubt(study, judgement)
         # Where the allowance is too small for the target, the cells that owe most are split as far as it goes.
         for ease in (1.0, 2.0, 4.0, 8.0, 16.0):
             passes = passes_needed(doubt, ease)

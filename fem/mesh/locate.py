@@ -1,5 +1,7 @@
 """Where points lie in a mesh: one sparse matrix that reads nodal temperatures at given points."""
 
+from weakref import WeakKeyDictionary
+
 import numpy as np
 import scipy.sparse as sp
 from numpy.typing import NDArray
@@ -14,6 +16,11 @@ OUTSIDE = 1e-3
 """A point may lie this part of a cell's size outside the mesh (chords of arcs, rounding) and is then read at the nearest cell's edge."""
 
 
+_KNOWN: WeakKeyDictionary[Mesh, dict[bytes, sp.csr_array]] = (
+    WeakKeyDictionary()
+)  # a run and its checks ask for the same points
+
+
 def interpolation(mesh: Mesh, points: Floats) -> sp.csr_array:
     """Return the matrix (n, N) that interpolates nodal values linearly at points (n, 2) [m].
 
@@ -23,6 +30,13 @@ def interpolation(mesh: Mesh, points: Floats) -> sp.csr_array:
         If a point lies outside the mesh by more than the sagitta of the arcs or rounding.
     """
     points = np.asarray(points, dtype=np.float64).reshape(-1, 2)
+    known = _KNOWN.setdefault(mesh, {})
+    if points.tobytes() not in known:
+        known[points.tobytes()] = _interpolation(mesh, points)
+    return known[points.tobytes()]
+
+
+def _interpolation(mesh: Mesh, points: Floats) -> sp.csr_array:
     if not len(points):
         return sp.csr_array((0, len(mesh.points)))
     cells, weights, fits = _locate(mesh, points)
