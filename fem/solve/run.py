@@ -163,7 +163,7 @@ class Recorder:
         self._last, self._end = step, (v1, d1)
         heat0, heat1 = self._sum @ self.heat, self._sum @ (self.heat + step.heat)
         made0, made1 = self.made, self.made + step.made
-        flow0, flow1, mean = self._sum @ step.flow0, self._sum @ step.flow, self._sum @ step.heat / dt
+        flow0, flow1, mean = self._summed(step.flow0), self._sum @ step.flow, self._sum @ step.heat / dt
         made_rate = (step.made / dt)[self._makes]
         self._rows.append(
             (
@@ -175,6 +175,12 @@ class Recorder:
         )
         self.times.append((step.t0, step.t1))
         self.heat, self.made = self.heat + step.heat, made1
+
+    def _summed(self, flow: Floats) -> Floats:
+        """Return the flow rows right after a jump: unknown only where a face that has no finite flow there takes part."""
+        unknown = np.isnan(flow)
+        total = self._sum @ np.where(unknown, 0.0, flow)
+        return np.where(self._sum @ unknown > 0.0, np.nan, total)
 
     def history(self) -> History:
         """Return all rows so far."""
