@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 
 from fem.checks.facts import Facts
 from fem.laws import Law
-from fem.results.bands import NARROWEST
 from fem.results.findings import Finding
 from fem.results.history import TEMPERATURES
 from fem.solve.problem import Face
@@ -18,6 +17,8 @@ from fem.solve.problem import Face
 Floats = NDArray[np.float64]
 
 SAMPLES = 8  # per step
+MATTERS = 0.1
+"""An excursion is a doubt from this part of the narrowest wanted band on; below it, it is an error like any other inside the bands."""
 
 
 def check(facts: Facts) -> list[Finding]:
@@ -50,8 +51,7 @@ def bounds(facts: Facts) -> tuple[float, float, float]:
     problem, run = facts.problem, facts.study.finest
     times = _times(facts)
     lows, highs = [np.min(run.start)], [np.max(run.start)]
-    # What is far below the band that anybody asked for is the rounding of the time stepping, not a doubt.
-    slack = NARROWEST * min((g.wanted for g in facts.goals if g.key.kind in TEMPERATURES), default=1.0)
+    slack = MATTERS * min((g.wanted for g in facts.goals if g.key.kind in TEMPERATURES), default=1.0)
     heated = cooled = False
     for face in problem.faces:
         x, y = _places(facts, face)
