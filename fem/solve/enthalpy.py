@@ -61,28 +61,34 @@ class TableEnthalpy:
         c = np.broadcast_to(np.asarray(self._law(T=T), dtype=np.float64), T.shape)
         H = np.concatenate(([0.0], np.cumsum(0.5 * STEP * (c[1:] + c[:-1]))))
         self._first, self._last = first, last
-        self._c, self._H = np.ascontiguousarray(c), H - H[-first]
+        self._H = H - H[-first]
+        self._rise, self._bend = (
+            STEP * c[:-1],
+            0.5 * STEP * np.diff(c),
+        )  # H = H0 + f (rise + bend f), f in [0, 1] from row to row
 
-    def _locate(self, T: Floats) -> tuple[NDArray[np.intp], Floats]:
+    def _locate(self, T: Floats) -> tuple[Floats, NDArray[np.intp], Floats]:
+        """Return T brought into the table, its row and the fraction of the way to the next one."""
         low, high = float(np.min(T, initial=ZERO)), float(np.max(T, initial=ZERO))
         if (low - ZERO < STEP * self._first and low > FLOOR) or (high - ZERO > STEP * self._last and high < CEILING):
             self._extend(low, high)
-        s = (T - ZERO) / STEP - self._first
-        cell = np.clip(np.floor(s), 0, len(self._c) - 2).astype(np.intp)
-        return cell, s - cell
+        bottom, top = ZERO + STEP * self._first, ZERO + STEP * self._last
+        inside = T if bottom < low and high < top else np.clip(T, bottom, top)
+        s = (inside - bottom) / STEP
+        row = np.minimum(s.astype(np.intp), len(self._rise) - 1)
+        return inside, row, s - row
 
     def heat(self, T: Floats, x: Floats, y: Floats) -> Floats:  # noqa: ARG002
         """Return H(T), J/m3, in the shape of T."""
-        cell, f = self._locate(T)
-        inside = np.clip(f, 0.0, 1.0)
-        c0, c1 = self._c[cell], self._c[cell + 1]
-        H = self._H[cell] + STEP * inside * (c0 + 0.5 * (c1 - c0) * inside)
-        return np.asarray(H + STEP * np.where(f < 0.0, f * c0, np.maximum(f - 1.0, 0.0) * c1))
+        inside, row, f = self._locate(T)
+        rise, bend = self._rise[row], self._bend[row]
+        H = self._H[row] + f * (rise + bend * f)
+        return np.asarray(H if inside is T else H + (rise + 2.0 * bend * f) / STEP * (T - inside))
 
     def slope(self, T: Floats, x: Floats, y: Floats) -> Floats:  # noqa: ARG002
         """Return dH/dT, J/(m3 K), in the shape of T."""
-        cell, f = self._locate(T)
-        return np.asarray(self._c[cell] + (self._c[cell + 1] - self._c[cell]) * np.clip(f, 0.0, 1.0))
+        _, row, f = self._locate(T)
+        return np.asarray((self._rise[row] + 2.0 * self._bend[row] * f) / STEP)
 
 
 class PlacedEnthalpy:
