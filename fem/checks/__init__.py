@@ -2,7 +2,7 @@
 
 from collections.abc import Callable
 
-from fem.checks import corners, extremes, first_transient, ledger, mesh_quality, order, outcome, stock_range
+from fem.checks import corners, extremes, first_transient, ledger, mesh_quality, order, outcome, pieces, stock_range
 from fem.checks.facts import Facts
 from fem.results.findings import Finding
 
@@ -14,6 +14,7 @@ CHECKS: tuple[Callable[[Facts], list[Finding]], ...] = (
     order.check,
     first_transient.check,
     corners.check,
+    pieces.check,
     mesh_quality.check,
 )
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from fem.checks.facts import Facts
 from fem.results.findings import Finding
-from fem.runs.doubt import map_doubt
+from fem.runs.doubt import node_doubt
 
 Floats = NDArray[np.float64]
 
@@ -29,10 +29,10 @@ def _reentrant(facts: Facts) -> list[Finding]:
         (goal.wanted for goal in facts.goals if goal.key.kind in ("gauge", "highest", "lowest")), default=np.inf
     )
     middle = facts.study.levels[-2].mesh
-    doubt = map_doubt(facts.study)
+    doubt = node_doubt(facts.study)
     found = []
     for node, angle in reentrant_nodes(facts):
-        near = float(doubt[(middle.cells == node).any(axis=1)].max())
+        near = float(doubt[node])
         if near <= wanted:
             continue
         x, y = middle.points[node]
@@ -40,7 +40,7 @@ def _reentrant(facts: Facts) -> list[Finding]:
             Finding(
                 "corner",
                 f"re-entrant corner of {np.rad2deg(angle):.0f} degrees at {facts.names.place(x, y)}: the two finest meshes differ by up to "
-                f"{facts.names.difference(near)} in the cells next to it; "
+                f"{facts.names.difference(near)} at it; "
                 "the heat flux density at the point itself has no finite value, and so no band",
                 "",
                 float(x),

@@ -10,6 +10,7 @@ from fem.cli.check_tables import show
 from fem.cli.run import asked_for, in_docket, read
 from fem.docket import Docket
 from fem.docket.content import content_hash
+from fem.earn.limits import limit_text
 from fem.earn.pose import Posed, pose
 from fem.laws import Law
 from fem.results.numbers import Scale, Writer
@@ -19,6 +20,8 @@ from fem.solve.problem import Face
 
 SMALL, LARGE = 1e-3, 20.0
 """m, across. Sections outside this are asked about, never refused; our own judgement, no source."""
+COLD = 200.0
+"""K. Dockets in kelvin that stay below it are asked about, never refused; our own judgement, no source."""
 SAMPLES = 500
 """Instants at which a schedule is read, besides its breaks, for the lowest and highest value that is told."""
 
@@ -69,21 +72,23 @@ def found_in(docket: Docket, posed: Posed) -> Entry:
     writer = Writer(docket.units, steady=docket.steady, revolution=posed.problem.revolution)
     units = {name: writer.scale(name).unit for name in ("length", "time", "temperature")}
     difference = writer.scale("temperature difference")
+    edges, exposures = _edges(posed, writer), _exposures(posed, writer)
+    remarks = [*_odd_size(posed.plan, writer), *_adding_up(edges), *_odd_kelvin(docket, exposures)]
     return {
         "title": docket.title,
         "content_hash": content_hash(docket),
         "steady": docket.steady,
         "revolution": posed.problem.revolution,
-        "notes": [*posed.plan.notes, *_odd_size(posed.plan, writer)],
+        "notes": [*posed.plan.notes, *remarks],
         "variants": [variant.name for variant in docket.variants],
         "units": {**units, "difference": difference.unit.removeprefix("delta_")},
         "regions": _regions(posed, writer),
-        "edges": _edges(posed, writer),
+        "edges": edges,
         "interfaces": _interfaces(posed.plan, writer.scale("length")),
-        "exposures": _exposures(posed, writer),
+        "exposures": exposures,
         "clock": _clock(docket, posed, writer.scale("time")),
         "gauges": _gauges(docket, posed.plan, writer),
-        "limits": [{"name": limit.name, "sentence": limit.sentence(docket.units)} for limit in docket.limits],
+        "limits": [{"name": limit.name, "sentence": limit_text(docket, limit)} for limit in docket.limits],
         "wanted": {"gauges": difference.out(docket.wanted.gauges)},
         "allowance": {"cells": docket.allowance.cells, "seconds": docket.allowance.seconds},
     }
@@ -108,6 +113,24 @@ def _odd_size(plan: Plan, writer: Writer) -> list[str]:
     if SMALL <= plan.size <= LARGE:
         return []
     return [f"the section is {writer.length(plan.size)} across: is the unit of length right?"]
+
+
+def _adding_up(edges: list[Entry]) -> list[str]:
+    """Return a remark on each outside edge that faces more than one exposure."""
+    several = [edge for edge in edges if len(edge["faces"]) > 1]
+    return [f"{edge['name']} faces {' and '.join(edge['faces'])}: what they bring adds up" for edge in several]
+
+
+def _odd_kelvin(docket: Docket, exposures: list[Entry]) -> list[str]:
+    """Return a remark where all temperatures of a docket in kelvin are so low that degrees Celsius may be meant."""
+    starts = [docket.start.everywhere, *(region.start for region in docket.section.regions)]
+    known = [float(start) for start in starts if isinstance(start, int | float)]
+    known += [limit.temperature for limit in docket.limits if limit.temperature is not None]
+    values = [value for exposure in exposures for value in exposure["values"].values()]
+    known += [value["highest"] for value in values if value["unit"] == "K" and value["highest"] is not None]
+    if docket.units.temperature != "K" or not known or max(known) >= COLD:
+        return []
+    return [f'no temperature here reaches {COLD:g} K (-73 °C): are they in °C? then write temperature = "degC"']
 
 
 def _edges(posed: Posed, writer: Writer) -> list[Entry]:

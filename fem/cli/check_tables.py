@@ -86,8 +86,9 @@ def _lines(found: Entry) -> list[str]:
     clock, time, step = found["clock"], found["units"]["time"], sign(found["units"]["difference"])
     lines = ["steady state"]
     if clock is not None:
+        breaks = f"{clock['breaks']} break{'' if clock['breaks'] == 1 else 's'}"
         ends = f"clock: {plain(clock['begin'])} to {plain(clock['end'])} {time}"
-        lines = [f"{ends}, reported every {plain(clock['report_every'])} {time}, {clock['breaks']} breaks to land on"]
+        lines = [f"{ends}, reported every {plain(clock['report_every'])} {time}, {breaks} to land on"]
     allowance = found["allowance"]
     wanted = f"wanted band: {plain(found['wanted']['gauges'])} {step} at the gauges that state none of their own"
     lines.append(f"{wanted}; allowance: {allowance['cells']} cells, {plain(allowance['seconds'])} s")

@@ -130,8 +130,10 @@ def shelf_text(record: Record) -> str:
     told = f"read from the shelf, where it lies since {record.created}; --again runs it anew"
     if record.kind == QUICK or record.standing == "vouched":
         return told
-    ended = f", for its work ended so: {record.turns[-1].then.removeprefix('stop: ')}" if record.turns else ""
-    return f"{told}. This vouch is open{ended}"
+    if not record.reasons:
+        return f"{told}. This vouch is open"
+    first, more = Writer.of(record).words(record.reasons[0].text), len(record.reasons) - 1
+    return f"{told}. This vouch is open: {first}" + (f" (and {more} more)" if more else "")
 
 
 def on_shelf(shelf: Path, digest: str, kind: str) -> tuple[Path, Record] | None:

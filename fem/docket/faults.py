@@ -5,7 +5,7 @@ from typing import Any
 
 from pydantic_core import InitErrorDetails
 
-from fem.errors import DocketError, Problem, shown
+from fem.errors import DocketError, Problem, Said, shown
 from fem.quantities.strict import nearest, unknown_key
 from fem.stock.models import PROPERTIES, Stock
 
@@ -62,12 +62,20 @@ def _problem(
     if kind == "extra_forbidden":
         allowed, hint = unknown_key(str(loc[-1]), _stock_keys(loc))
         return Problem(place, found, allowed, hint)
+    if kind == "tuple_type" and isinstance(value, dict) and str(loc[-1]).removesuffix("s") in LISTS:
+        name = str(loc[-1]).removesuffix("s")
+        return Problem(place, shown(Said(f"[{name}]")), f"[[{name}]], once for each", brackets_hint(name))
     if kind == "literal_error":
-        expected = str(ctx["expected"])
-        close = nearest(str(value), [word.strip("' ") for word in expected.replace(" or ", ",").split(",")])
+        expected = str(ctx["expected"]).replace("'", '"')
+        close = nearest(str(value), [word.strip('" ') for word in expected.replace(" or ", ",").split(",")])
         return Problem(place, found, expected, f'did you mean "{close}"?' if close else "use one of these")
     allowed = msg.removeprefix("Value error, ").removeprefix("Input should be ").removeprefix("Assertion failed, ")
     return Problem(place, found, allowed, MENDS.get(kind, "change it accordingly"))
+
+
+def brackets_hint(name: str) -> str:
+    """Return how to mend a list of tables whose heading stands in single brackets."""
+    return f"write [[{name}]] in double brackets: there may be several"
 
 
 MENDS = {

@@ -1,9 +1,8 @@
 """Docket files: ``NAME.docket.toml``, and ``.zip`` with its logs. The only reader and writer of either.
 
-TOML 1.0 is read by the standard library; files that exist are changed through tomlkit, which keeps comments and layout.
+`fem.docket.toml_text` reads TOML; files that exist are changed through tomlkit, which keeps comments and layout.
 """
 
-import tomllib
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -13,6 +12,7 @@ from fem.docket.archive import MAX_TEXT, SUFFIX, open_zip, zip_bytes
 from fem.docket.form import FORMAT, changed
 from fem.docket.models import FILE_KEYS, Docket, as_meant
 from fem.docket.text import merged, new_text
+from fem.docket.toml_text import read_toml
 from fem.errors import DocketError, Problem, shown
 from fem.quantities.strict import unknown, unknown_key
 from fem.quantities.units import LENGTHS, TEMPERATURES, TIMES, FileUnits, Reading
@@ -78,7 +78,7 @@ def read_text(text: str, *, logs: LogFolder, file: str = "") -> Docket:
         With every problem of the text.
     """
     try:
-        units, title, problems, data = _header(_table(text))
+        units, title, problems, data = _header(read_toml(text))
         try:
             docket = Docket.read({**data, "title": title, "units": units}, Reading(units=units, logs=logs))
         except DocketError as error:
@@ -88,15 +88,6 @@ def read_text(text: str, *, logs: LogFolder, file: str = "") -> Docket:
     except DocketError as error:
         raise error.in_file(file) from None
     return docket
-
-
-def _table(text: str) -> dict[str, Any]:
-    try:
-        return tomllib.loads(text)
-    except (ValueError, RecursionError) as error:  # ValueError: also numbers too long for Python to read
-        what = "nested too deep" if isinstance(error, RecursionError) else str(error)
-        allowed = "TOML 1.0 (toml.io)"
-        raise DocketError.single("text", what, allowed, "mend the line that is named") from error
 
 
 def _header(data: dict[str, Any]) -> tuple[FileUnits, str, list[Problem], dict[str, Any]]:

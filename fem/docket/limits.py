@@ -1,12 +1,12 @@
 """Gauges, and the limits that are judged against the bands of their histories."""
 
-from typing import Any, ClassVar, Literal, Self
+from typing import Annotated, Any, ClassVar, Literal, Self
 
-from pydantic import Field, model_validator
+from pydantic import BeforeValidator, Field, model_validator
 from pydantic_core import core_schema
 
 from fem.docket.regions import DotlessName, Name
-from fem.errors import Said
+from fem.errors import Said, refusal
 from fem.quantities.strict import Strict, fault, raise_all, raise_one
 from fem.quantities.units import (
     FileUnits,
@@ -41,6 +41,23 @@ OPTIONAL: dict[str, tuple[str, ...]] = {
     "cool slower than": ("over", "during"),
 }
 """Where not listed: `during`."""
+
+
+def _place(value: Any) -> Any:
+    """Return what stands at `at` if it is a text.
+
+    Raises
+    ------
+    PydanticCustomError
+        Otherwise: a point is a gauge's business.
+    """
+    if not isinstance(value, str):
+        allowed = "a gauge's or region's name, or \"anywhere\""
+        raise refusal(allowed, "make a [[gauge]] there and write its name; a name stands in quotes")
+    return value
+
+
+At = Annotated[str, BeforeValidator(_place)]
 
 
 class Gauge(Strict):
@@ -87,7 +104,7 @@ class Limit(Strict):
     """
 
     name: Name = Field(description="The limit's name.")
-    at: str = Field(min_length=1, description='A gauge, a region, or "anywhere" for the whole section.')
+    at: At = Field(min_length=1, description='A gauge, a region, or "anywhere" for the whole section.')
     must: Must = Field(description="What must hold.")
     temperature: Temperature | None = Field(None, description="Temperature to reach, hold or keep from.")
     within: PositiveDuration | None = Field(None, description="How long after the begin it must be reached.")
@@ -118,8 +135,8 @@ class Limit(Strict):
         raise_all("limit", faults)
         return self
 
-    def sentence(self, units: FileUnits) -> str:
-        """Return the limit as a sentence in the units of the docket."""
+    def sentence(self, units: FileUnits, *, span: float | None = None) -> str:
+        """Return the limit as a sentence in the units of the docket; `span`: over which a rate is averaged, s."""
         where = self.at if self.at == "anywhere" else f'"{self.at}"'
         text = f"{where} must {self.must}"
         if self.other is not None and self.below is not None:
@@ -129,6 +146,8 @@ class Limit(Strict):
             text += f" {said(self.temperature, 'temperature', units)}"
         if self.rate is not None:
             text += f" {said(self.rate, 'heating rate', units)}"
+        if span is not None:
+            text += f", averaged over {said(span, 'time', units)},"
         if self.within is not None:
             text += f" within {said(self.within, 'time', units)}"
         if self.at_least is not None:
@@ -136,4 +155,4 @@ class Limit(Strict):
         if self.during is not None:
             begin, end = (said(t, "time", units) for t in self.during)
             text += f" from {begin} to {end}"
-        return text.replace("degC", "°C").replace("degF", "°F")
+        return text.rstrip(",").replace("degC", "°C").replace("degF", "°F")

@@ -13,9 +13,14 @@ from pydantic_core import InitErrorDetails
 from fem.docket.exposures import Exposure, Stretch
 from fem.docket.limits import GAUGE_ONLY, Limit
 from fem.docket.parts import LISTS, Parts
-from fem.errors import Said
-from fem.quantities.strict import fault, unknown
+from fem.errors import Said, shown
+from fem.quantities.strict import fault, nearest, unknown
 from fem.schedules.models import span_of, varies
+from fem.stock.models import find
+from fem.stock.models import nearest as nearest_stocks
+
+MOST_STOCKS = 3
+"""Of the library, that a message suggests."""
 
 
 def link_faults(parts: Parts) -> list[InitErrorDetails]:
@@ -59,20 +64,26 @@ def _stocks(parts: Parts) -> list[InitErrorDetails]:
     for i, region in parts.regions:
         if not region.stock or region.stock in parts.stocks or region.stock in parts.library:
             continue
-        _, hint = unknown("", region.stock, [*parts.stocks, *parts.library])
-        own = ", ".join(f'"{name}"' for name in sorted(parts.stocks)) or "none"
-        allowed = f"own stock ({own}) or one of the {len(parts.library)} of the library"
-        faults.append(
-            fault(("section", "region", i, "stock"), region.stock, allowed, f"{hint} (heatvouch stock lists them)")
-        )
+        own = ", ".join(f'"{name}"' for name in sorted(parts.stocks))
+        allowed = f"one of the {len(parts.library)} stocks of the library"
+        allowed = f"own stock ({own}) or {allowed}" if own else f"{allowed}; the docket has none of its own"
+        hint = f"{_stock_hint(parts, region.stock)} (heatvouch stock list shows the library's)"
+        faults.append(fault(("section", "region", i, "stock"), region.stock, allowed, hint))
     return faults
 
 
+def _stock_hint(parts: Parts, name: str) -> str:
+    """Return what an unknown stock may have meant: own stock spelt like it, the library's with its words, or like it."""
+    own = nearest(name, parts.stocks)
+    meant = [own] if own else [stock.name for stock in find(name)][:MOST_STOCKS] or nearest_stocks(name, 1)
+    return f"did you mean {' or '.join(map(shown, meant))}?" if meant else "use one of these"
+
+
 def _edges(parts: Parts) -> dict[str, tuple[str, ...]]:
-    """Return the names of the edges of every region; where a name is doubled, of the first."""
+    """Return the names of the edges of every region; where a name is doubled, of all that have it."""
     edges: dict[str, tuple[str, ...]] = {}
     for _, region in parts.regions:
-        edges.setdefault(region.name, region.edges())
+        edges[region.name] = tuple(dict.fromkeys((*edges.get(region.name, ()), *region.edges())))
     return edges
 
 
@@ -150,7 +161,7 @@ def _limits(parts: Parts) -> list[InitErrorDetails]:
     places = [*gauges, *(name for name in parts.known("region") if name not in voids), "anywhere"]
     for i, limit in parts.limits:
         fit = gauges if limit.must in GAUGE_ONLY else places
-        if limit.at not in fit:
+        if limit.at and limit.at not in fit:  # an empty one is faulty, and listed with its limit
             what = "the gauges" if limit.must in GAUGE_ONLY else "the gauges and regions"
             allowed, hint = unknown(what, limit.at, fit)
             faults.append(fault(("limit", i, "at"), limit.at, allowed, hint))

@@ -15,7 +15,7 @@ from fem.docket.links import link_faults
 from fem.docket.parts import Parts
 from fem.docket.regions import Name, Region, Section, Vertex
 from fem.docket.terms import Allowance, Clock, Start, Variant, Wanted
-from fem.errors import DocketError
+from fem.errors import DocketError, Said
 from fem.quantities.strict import Strict, fault, nearest, raise_all, unknown
 from fem.quantities.units import SI, FileUnits, Reading, reading
 from fem.schedules.log_folder import LogFolder
@@ -148,7 +148,7 @@ class Docket(Strict):
             try:
                 self.variant(variant.name)
             except DocketError as error:
-                faults += [fault(("variant", i, p.place), p.value, p.allowed, p.hint) for p in error.problems]
+                faults += [fault(("variant", i, p.place), Said(p.value), p.allowed, p.hint) for p in error.problems]
         raise_all("docket", faults)
         return self
 

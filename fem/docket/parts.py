@@ -99,6 +99,8 @@ def _items(table: Any, *keys: str) -> list[Any]:
         found = _get(table, key)
         if isinstance(found, list | tuple):
             return list(found)
+        if isinstance(found, dict):  # single brackets where a list of tables belongs: a fault, told once
+            return [found]
     return []
 
 

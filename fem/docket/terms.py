@@ -33,6 +33,10 @@ class Clock(Strict):
         elif (self.end - self.begin) / self.report_every > MOST_REPORTS:
             every = said(self.report_every, "time", units)
             faults.append(fault(("report_every",), every, f"at most {MOST_REPORTS} reports", "report less often"))
+        elif self.report_every > self.end - self.begin:
+            every, length = (said(t, "time", units) for t in (self.report_every, self.end - self.begin))
+            allowed = f"at most the {length} that the clock runs"
+            faults.append(fault(("report_every",), every, allowed, "report more often, or let the clock run longer"))
         for i, t in enumerate(self.instants):
             if not self.begin <= t <= self.end:
                 hint = "drop it, or let the clock run longer"

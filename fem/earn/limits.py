@@ -49,6 +49,11 @@ def rate_span(docket: Docket, limit: Limit) -> float:
     return float(docket.clock.report_every)
 
 
+def limit_text(docket: Docket, limit: Limit) -> str:
+    """Return a limit as a sentence in the docket's units; a rate with the span over which it is averaged."""
+    return limit.sentence(docket.units, span=None if limit.rate is None else rate_span(docket, limit))
+
+
 def derived(docket: Docket) -> tuple[Derived, ...]:
     """Return the series that the docket's limits need besides the recorded ones."""
     out = {}
@@ -73,9 +78,9 @@ class _View:
     b: Floats
 
 
-def _view(figures: Figures, key: Key, limit: Limit) -> _View:
-    value, band = figures.series(key)
-    t = figures.grid.t
+def _view(figures: Figures, key: Key, limit: Limit, *, dense: bool = False) -> _View:
+    """Return what the limit looks at; `dense`: between the instants of the grid too, for what crosses a level there."""
+    t, value, band = figures.dense(key) if dense else (figures.grid.t, *figures.series(key))
     inside = np.ones(len(t), dtype=bool)
     if limit.during is not None:
         inside = (t >= limit.during[0]) & (t <= limit.during[1])
@@ -88,9 +93,9 @@ def judge_limit(docket: Docket, limit: Limit, figures: Figures) -> Verdict:
     if not len(view.t):  # the work ended before the limit came into force
         return _verdict(docket, limit, np.nan, np.inf, float(figures.grid.t[-1]), None)
     if limit.must == "reach":
-        return _reach(docket, limit, view, figures.grid.t[0])
+        return _reach(docket, limit, view, figures)
     if limit.must == "hold above":
-        return _hold(docket, limit, view)
+        return _hold(docket, limit, _view(figures, subject(docket, limit), limit, dense=True))
     sign, threshold = {
         "stay below": (1.0, limit.temperature),
         "stay above": (-1.0, limit.temperature),
@@ -105,32 +110,26 @@ def judge_limit(docket: Docket, limit: Limit, figures: Figures) -> Verdict:
     return _verdict(docket, limit, bound - values[i], max(worst - values[i], values[i] - best), float(view.t[i]), None)
 
 
-def _reach(docket: Docket, limit: Limit, view: _View, begin: float) -> Verdict:
-    by = view.t <= (np.inf if limit.within is None else begin + limit.within)
+def _reach(docket: Docket, limit: Limit, view: _View, figures: Figures) -> Verdict:
+    by = view.t <= (np.inf if limit.within is None else figures.grid.t[0] + limit.within)
     i = int(np.argmax(np.where(by, view.v, -np.inf)))
     high, low = float(np.max((view.v + view.b)[by])), float(np.max((view.v - view.b)[by]))
-    wide = max(high - view.v[i], view.v[i] - low)
-    crossing = tuple(
-        first_reach(view.t, v, float(limit.temperature or 0.0)) for v in (view.v, view.v + view.b, view.v - view.b)
-    )
-    return _verdict(
-        docket,
-        limit,
-        view.v[i] - float(limit.temperature or 0.0),
-        wide,
-        float(view.t[i]),
-        (crossing[0], crossing[1], crossing[2]),
-    )
+    wide, threshold = max(high - view.v[i], view.v[i] - low), float(limit.temperature or 0.0)
+    fine = _view(figures, subject(docket, limit), limit, dense=True)
+    at, early, late = (first_reach(fine.t, v, threshold) for v in (fine.v, fine.v + fine.b, fine.v - fine.b))
+    return _verdict(docket, limit, view.v[i] - threshold, wide, float(view.t[i]), (at, early, late))
 
 
 def _hold(docket: Docket, limit: Limit, view: _View) -> Verdict:
     span, threshold = float(limit.at_least or 0.0), float(limit.temperature or 0.0)
-    value, i = held_level(view.t, view.v, span)
+    value, t = held_level(view.t, view.v, span)
     if not np.isfinite(value):  # the limit is in force for less than the span
-        return _verdict(docket, limit, -np.inf, 0.0, float(view.t[-1]), None)
+        return _verdict(docket, limit, -np.inf, 0.0, t, None)
+    if not np.all(np.isfinite(view.b)):
+        return _verdict(docket, limit, value - threshold, np.inf, t, None)
     high, _ = held_level(view.t, view.v + view.b, span)
     low, _ = held_level(view.t, view.v - view.b, span)
-    return _verdict(docket, limit, value - threshold, max(high - value, value - low), float(view.t[i]), None)
+    return _verdict(docket, limit, value - threshold, max(high - value, value - low), t, None)
 
 
 def _verdict(
@@ -142,7 +141,7 @@ def _verdict(
     elif np.isfinite(band) and margin + band < 0.0:
         call = Call.not_met
     return Verdict(
-        limit.name, limit.sentence(docket.units), call, float(margin), float(band), t, crossing, limit.rate is not None
+        limit.name, limit_text(docket, limit), call, float(margin), float(band), t, crossing, limit.rate is not None
     )
 
 
@@ -157,21 +156,45 @@ def first_reach(t: Floats, v: Floats, threshold: float) -> float:
     return float(t[i - 1] + (t[i] - t[i - 1]) * (threshold - v[i - 1]) / (v[i] - v[i - 1]))
 
 
-def held_level(t: Floats, v: Floats, span: float) -> tuple[float, int]:
-    """Return the highest level that v keeps to, or above, for at least `span` [s] on end, and the instant where that is tightest.
+def held_level(t: Floats, v: Floats, span: float) -> tuple[float, float]:
+    """Return the highest level that v, straight between instants, keeps to or above for `span` [s] on end, and where that is tightest [s].
 
-    Minus infinity when the record is shorter than the span.
+    Found by bisection on the level. Minus infinity when the record is shorter than the span.
     """
-    best, where = -np.inf, 0
-    for i in range(len(t)):
-        last = int(np.searchsorted(t, t[i] + span, side="left"))
-        if t[-1] < t[i] + span - 1e-9 * span:
-            break
-        last = min(last, len(t) - 1)
-        low = i + int(np.argmin(v[i : last + 1]))
-        if v[low] > best:
-            best, where = float(v[low]), low
-    return best, where
+    if t[-1] - t[0] < span * (1.0 - 1e-12):
+        return -np.inf, float(t[-1])
+    low, high = float(np.min(v)), float(np.max(v))
+    best = longest_above(t, v, low)
+    for _ in range(60):
+        middle = 0.5 * (low + high)
+        stay = longest_above(t, v, middle)
+        if stay[1] - stay[0] >= span * (1.0 - 1e-12):
+            low, best = middle, stay
+        else:
+            high = middle
+    held = (t >= best[0]) & (t <= best[1])
+    inside = np.flatnonzero(held)
+    ends = [(float(v[i]), float(t[i])) for i in inside] or [(low, best[0])]
+    return low, min([(low, best[0]), *ends])[1]
+
+
+def longest_above(t: Floats, v: Floats, level: float) -> tuple[float, float]:
+    """Return begin and end, s, of the longest time for which v, straight between instants, is at or above the level."""
+    above = np.concatenate(([False], v >= level, [False]))
+    starts, stops = np.flatnonzero(above[1:] & ~above[:-1]), np.flatnonzero(above[:-1] & ~above[1:]) - 1
+    best = (float(t[0]), float(t[0]))
+    for i, j in zip(starts.tolist(), stops.tolist(), strict=True):
+        begin, end = _cross(t, v, level, i - 1, i), _cross(t, v, level, j + 1, j)
+        if end - begin > best[1] - best[0]:
+            best = (begin, end)
+    return best
+
+
+def _cross(t: Floats, v: Floats, level: float, out: int, into: int) -> float:
+    """Return where v crosses the level between an instant outside and one inside; the inner one at an end of the record."""
+    if not 0 <= out < len(t) or v[into] == v[out]:
+        return float(t[into])
+    return float(t[into] + (t[out] - t[into]) * (level - v[into]) / (v[out] - v[into]))
 
 
 def closing_goal(docket: Docket, limit: Limit, verdict: Verdict, floor: float) -> Goal | None:

@@ -13,6 +13,7 @@ from fem.laws import Law, constant
 from fem.quantities.units import to_si
 from fem.schedules.models import law_of
 from fem.section.build import Plan, plan_of, stretch_label
+from fem.section.pieces import pieces
 from fem.section.where import regions_at
 from fem.solve.problem import Face, Film, Radiant
 from fem.solve.problem import Problem as HeatProblem
@@ -196,12 +197,8 @@ def _floating(docket: Docket, plan: Plan, faces: list[Face]) -> list[Problem]:
     if docket.clock is not None:
         return []
     anchored = {i for face in faces if _fixes(face) for i in face.curves}
-    group = list(range(len(plan.region_names)))  # regions joined through their interfaces
-    for curve in plan.curves:
-        if curve.left >= 0 and curve.right >= 0:
-            old, new = group[curve.left], group[curve.right]
-            group = [new if g == old else g for g in group]
-    fixed = {group[r] for i in anchored for r in (plan.curves[i].left, plan.curves[i].right) if r >= 0}
+    fixed = {plan.region_names[r] for i in anchored for r in (plan.curves[i].left, plan.curves[i].right) if r >= 0}
+    afloat = [name for piece in pieces(plan) if not fixed & set(piece) for name in piece]
     return [
         Problem(
             f'region "{name}"',
@@ -209,8 +206,7 @@ def _floating(docket: Docket, plan: Plan, faces: list[Face]) -> list[Problem]:
             "at least one in every part of a steady job",
             "add an exposure, or give the job a clock",
         )
-        for name, g in zip(plan.region_names, group, strict=True)
-        if g not in fixed
+        for name in afloat
     ]
 
 

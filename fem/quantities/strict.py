@@ -9,6 +9,9 @@ from pydantic_core import InitErrorDetails, PydanticCustomError
 
 from fem.errors import refusal
 
+LIKE = 0.6
+"""Least likeness (difflib's ratio) of a word that is suggested; our own judgement, no source."""
+
 
 def nearest(word: str, known: Iterable[str]) -> str:
     """Return the known word that is most like this one, or an empty text when none is.
@@ -21,7 +24,7 @@ def nearest(word: str, known: Iterable[str]) -> str:
     ''
     """
     folded = {name.casefold(): name for name in known}
-    close = difflib.get_close_matches(str(word).casefold(), folded, n=1, cutoff=0.5)
+    close = difflib.get_close_matches(str(word).casefold(), folded, n=1, cutoff=LIKE)
     return folded[close[0]] if close else ""
 
 

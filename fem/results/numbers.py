@@ -238,8 +238,8 @@ def peak_text(writer: Writer, figures: Figures, key: Key, *, lowest: bool) -> tu
         return value, writer.instant(peak.t, (begin, end)) if end > begin else START
     first = float(figures.series(key)[0][0])
     if peak.t_low <= begin and abs(first - peak.value) <= peak.band:
-        late = peak.t_high - begin > SAME_INSTANT * (end - begin)
-        return value, f"{START} (or up to {writer.instant(peak.t_high, (begin, end))})" if late else START
+        late = writer.instant(peak.t_high, (begin, end))
+        return value, START if late == START else f"{START} (or up to {late})"
     return value, writer.time_span(peak.t, peak.t_low, peak.t_high)
 
 

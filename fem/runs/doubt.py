@@ -39,6 +39,15 @@ def map_doubt(study: Study) -> Floats:
     return parents_max(worst[fine.mesh.cells].max(axis=1))
 
 
+def node_doubt(study: Study) -> Floats:
+    """Return the largest difference over all frames between the two finest runs at each node of the middle mesh, K, (N_middle,)."""
+    middle, fine = study.levels[-2], study.levels[-1]
+    worst = np.zeros(len(middle.mesh.points))
+    for coarse, exact in zip(middle.frames, fine.frames, strict=False):
+        np.maximum(worst, np.abs(exact[: len(worst)] - coarse), out=worst)  # refinement keeps the numbers of old nodes
+    return worst
+
+
 def parents_max(values: Floats) -> Floats:
     """Return the largest value of the four children of each cell; the children of cell i are i, i + M, i + 2M, i + 3M."""
     return np.asarray(values.reshape(CHILDREN, -1).max(axis=0))

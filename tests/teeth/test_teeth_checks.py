@@ -15,6 +15,7 @@ from fem.checks import (
     mesh_quality,
     order,
     outcome,
+    pieces,
     stock_range,
 )
 from fem.checks.facts import Goal, RegionStock
@@ -26,7 +27,7 @@ from fem.solve.conduction import Conduction
 from fem.solve.march import March, Outcome
 from fem.solve.run import run
 from fem.vouch import vouch
-from tests.support.cases import facts_of, gauges_at, slab_docket, with_finest
+from tests.support.cases import box, docket_of, facts_of, gauges_at, region, slab_docket, with_finest
 from tests.support.grids import box_plan, face, grid_mesh, problem_on, square, strip
 from tests.support.jobs import with_points
 from tests.support.shapes import outline, rect
@@ -65,7 +66,8 @@ def test_findings_that_block_come_first(sound):
 
 def test_every_check_of_the_package_is_in_the_list_that_is_run():
     assert {check.__module__ for check in CHECKS} == {
-        m.__name__ for m in (corners, extremes, first_transient, ledger, mesh_quality, order, outcome, stock_range)
+        m.__name__
+        for m in (corners, extremes, first_transient, ledger, mesh_quality, order, outcome, pieces, stock_range)
     }
 
 
@@ -339,3 +341,21 @@ def test_a_job_in_which_nothing_happens_is_vouched(end):
     record = vouch(slab_docket(end=end, exposures=alike))
     assert record.standing == "vouched"
     assert abs(record.ledger.unexplained) < 1e-6
+
+
+# --- pieces -------------------------------------------------------------------------------------------------------------------------
+
+
+def test_a_section_in_two_pieces_is_told_and_one_in_one_piece_is_not():
+    def found(gap):
+        docket = docket_of(
+            [region("steel", box(0, 0, 1, 1)), region("wool", box(1 + gap, 0, 2, 1))],
+            {"hot": {"on": ("steel.left",), "held": 400.0}, "cold": {"on": ("wool.right",), "held": 300.0}},
+            end=1.0, gauges={"g": (0.5, 0.5)},
+        )  # fmt: skip
+        return [f for f in vouch(docket).findings if f.check == "pieces"]
+
+    assert found(0.0) == []
+    (finding,) = found(0.1)
+    assert '"steel" | "wool"' in finding.message
+    assert not finding.blocks

@@ -151,7 +151,7 @@ def test_time_levels_cover_the_largest_steps_and_the_shape_between_ends():
     assert shape == pytest.approx(hump)
     assert (part.band >= 0.9 + 0.5 * hump).all()
     ends = np.where(g.ends, 1.0, 0.0)
-    rest = three_levels(whole, half * ends, quarter * ends, g).band
+    rest = three_levels(whole, half * ends, quarter * ends, g, whole_steps=True).band
     assert part.band == pytest.approx(0.9 + rest + 0.5 * hump)
 
 

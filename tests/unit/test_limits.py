@@ -131,9 +131,11 @@ def test_first_reach_lies_between_instants():
 
 
 def test_held_level_is_the_best_span():
-    level, i = held_level(T, PEAK, 20.0)
+    level, tightest = held_level(T, PEAK, 20.0)
     assert level == pytest.approx(390.0)
-    assert T[i] in (40.0, 60.0)
+    assert tightest in (pytest.approx(40.0), pytest.approx(60.0))
+    # The span begins and ends between instants: the same peak on a coarser record, and a span that fits no instant of it.
+    assert held_level(T[::5], PEAK[::5], 23.0)[0] == pytest.approx(388.5)
     assert held_level(T, PEAK, 100.0)[0] == pytest.approx(350.0)
     assert held_level(T, PEAK, 101.0)[0] == -np.inf
 
