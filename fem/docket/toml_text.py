@@ -5,7 +5,7 @@ import tomllib
 from typing import Any
 
 from fem.docket.faults import LISTS, brackets_hint
-from fem.errors import DocketError, Said, shown
+from fem.errors import LONGEST_VALUE, DocketError, Said, shown
 
 PLACE = re.compile(r"(.*) \(at line (\d+), column (\d+)\)", re.DOTALL)
 """How the reader names the place of an error."""
@@ -16,7 +16,11 @@ SLIPS: tuple[tuple[re.Pattern[str], str], ...] = (
     (re.compile(r"=\s*([+-]?\d[\d.]*\s*[^\W\d][^#,\]}]*?)\s*(?:#.*)?$"), 'put a value with its unit in quotes: "{0}"'),
     (re.compile(r"=\s*([^\W\d][^#\"',\]}]*?)\s*(?:#.*)?$"), 'put text in quotes: "{0}"'),
     (re.compile(r"=\s*(\"[^\"]*|'[^']*)$"), "close the quotes at the end of the text"),
-    (re.compile(r"^\s*\[\[?[^\"'\]]*[^\"'\]\s] +[^\"'\]\s]"), 'put a name with blanks in quotes: [stock."my brick"]'),
+    (
+        re.compile(r"^\s*\[\[?[^\"'\],]*[^\"'\],\s] +[^\"'\],\s]"),
+        'put a name with blanks in quotes: [stock."my brick"]',
+    ),
+    (re.compile(r"\]\s+\["), "put a comma between the rows"),
     (re.compile(r"^\s*[^=\[#]*$"), "write key = value; inside a list, part the items by commas and close the bracket"),
 )
 """What a line that is no TOML looks like, and how it is mended; the first that fits is told."""
@@ -43,18 +47,20 @@ def _located(text: str, message: str) -> tuple[str, str]:
     match = PLACE.fullmatch(message)
     if match is None:
         return message, "mend the line that is named"
-    what, row, column = match.group(1), int(match.group(2)), match.group(3)
+    what, row, column = match.group(1), int(match.group(2)), int(match.group(3))
     lines = text.split("\n")
     single = _single_brackets(lines, row - 1)
     if single is not None:
         row, name = single
         return f"line {row + 1}: {_quoted(lines[row])}", brackets_hint(name)
     line = lines[row - 1]
-    return f"line {row}, column {column}: {_quoted(line)} ({what})", _guess(line)
+    return f"line {row}, column {column}: {_quoted(line, column)} ({what})", _guess(line)
 
 
-def _quoted(line: str) -> str:
-    return shown(Said(line))
+def _quoted(line: str, column: int = 1) -> str:
+    """Return a line as a message repeats it; of a long one what stands round the column, which counts from one."""
+    begin = max(0, column - 1 - LONGEST_VALUE // 2) if len(line.strip()) > LONGEST_VALUE else 0
+    return shown(Said(("…" if begin else "") + line[begin:]))
 
 
 def _single_brackets(lines: list[str], row: int) -> tuple[int, str] | None:

@@ -64,19 +64,14 @@ class Grid:
         return Grid(*(getattr(self, f.name)[:stop] for f in fields(self)))
 
 
-def window_max(values: Floats, grid: Grid, *, whole_steps: bool = False) -> Floats:
-    """Return the largest value over tau/2 ... 2 tau, tau = time since the last jump, never across a jump; shape of `values`.
-
-    `whole_steps` reaches at least to both ends of the step in which an instant lies: for values that stand on step ends only.
-    """
+def window_max(values: Floats, grid: Grid) -> Floats:
+    """Return the largest value over tau/2 ... 2 tau, tau = time since the last jump, never across a jump; shape of `values`."""
     tau = grid.t - grid.origin
     first = np.searchsorted(grid.t, grid.origin + 0.5 * tau, side="left")
     last = np.searchsorted(grid.t, np.minimum(grid.origin + 2.0 * tau, grid.until), side="right")
     out = np.empty_like(values)
     for i in range(len(grid.t)):
         a, b = min(first[i], i), max(last[i], i + 1)
-        if whole_steps:
-            a, b = min(a, grid.first[i]), max(b, grid.last[i] + 1)
         same = grid.origin[a:b] == grid.origin[i]
         out[:, i] = values[:, a:b][:, same].max(axis=1)
     return out
@@ -98,16 +93,16 @@ class Part:
     order: Floats
 
 
-def three_levels(coarse: Floats, middle: Floats, fine: Floats, grid: Grid, *, whole_steps: bool = False) -> Part:
-    """Return the band on `fine` from three runs whose sizes halve twice; `whole_steps` as for `window_max`.
+def three_levels(coarse: Floats, middle: Floats, fine: Floats, grid: Grid) -> Part:
+    """Return the band on `fine` from three runs whose sizes halve twice.
 
     Parameters
     ----------
     coarse, middle, fine : (n_keys, n) float
         The same series on the same grid.
     """
-    w = window_max(np.abs(fine - middle), grid, whole_steps=whole_steps)
-    w2 = window_max(np.abs(middle - coarse), grid, whole_steps=whole_steps)
+    w = window_max(np.abs(fine - middle), grid)
+    w2 = window_max(np.abs(middle - coarse), grid)
     with np.errstate(divide="ignore", invalid="ignore"):
         order = np.log2(w2 / w)
     order = np.where(np.isnan(order), np.inf, order)
@@ -115,11 +110,16 @@ def three_levels(coarse: Floats, middle: Floats, fine: Floats, grid: Grid, *, wh
     return Part(band, order)
 
 
-def between_ends(values: Floats, grid: Grid) -> Floats:
-    """Return what is left of a series after the straight line between the ends of each step is taken off; zero on step ends."""
+def along_steps(values: Floats, grid: Grid) -> Floats:
+    """Return a series that is straight between the ends of each step, where it is that of `values`."""
     t0, t1 = grid.t[grid.first], grid.t[grid.last]
     s = np.where(t1 > t0, (grid.t - t0) / np.where(t1 > t0, t1 - t0, 1.0), 0.0)
-    return np.asarray(values - (1.0 - s) * values[:, grid.first] - s * values[:, grid.last])
+    return np.asarray((1.0 - s) * values[:, grid.first] + s * values[:, grid.last])
+
+
+def between_ends(values: Floats, grid: Grid) -> Floats:
+    """Return what is left of a series after the straight line between the ends of each step is taken off; zero on step ends."""
+    return values - along_steps(values, grid)
 
 
 def time_levels(whole: Floats, half: Floats, quarter: Floats, grid: Grid) -> tuple[Part, Floats]:
@@ -135,7 +135,7 @@ def time_levels(whole: Floats, half: Floats, quarter: Floats, grid: Grid) -> tup
         The same series from runs whose steps halve twice, on the first mesh.
     """
     on_ends = np.where(grid.ends, 1.0, 0.0)
-    rest = three_levels(whole * on_ends, half * on_ends, quarter * on_ends, grid, whole_steps=True)
+    rest = three_levels(whole * on_ends, half * on_ends, quarter * on_ends, grid)
     shape = between_ends(quarter - whole, grid)
-    band = window_max(np.abs(whole - quarter) * on_ends, grid, whole_steps=True) + rest.band + 0.5 * np.abs(shape)
-    return Part(band, rest.order), shape
+    ends = window_max(np.abs(whole - quarter) * on_ends, grid) + rest.band
+    return Part(along_steps(ends, grid) + 0.5 * np.abs(shape), rest.order), shape

@@ -4,7 +4,16 @@ import numpy as np
 import pytest
 
 from fem.laws import Break, Law
-from fem.results.bands import ORDER_HIGH, ORDER_LOW, SAFETY, between_ends, three_levels, time_levels, window_max
+from fem.results.bands import (
+    ORDER_HIGH,
+    ORDER_LOW,
+    SAFETY,
+    along_steps,
+    between_ends,
+    three_levels,
+    time_levels,
+    window_max,
+)
 from fem.runs.grids import grid_of, report_times, steady_grid
 from fem.solve.stepping import Steps
 from tests.support.grids import box_plan, face, problem_on
@@ -151,8 +160,8 @@ def test_time_levels_cover_the_largest_steps_and_the_shape_between_ends():
     assert shape == pytest.approx(hump)
     assert (part.band >= 0.9 + 0.5 * hump).all()
     ends = np.where(g.ends, 1.0, 0.0)
-    rest = three_levels(whole, half * ends, quarter * ends, g, whole_steps=True).band
-    assert part.band == pytest.approx(0.9 + rest + 0.5 * hump)
+    rest = three_levels(whole, half * ends, quarter * ends, g).band
+    assert part.band == pytest.approx(along_steps(0.9 + rest, g) + 0.5 * hump)
 
 
 def test_between_ends_takes_off_the_straight_line():

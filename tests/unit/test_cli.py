@@ -25,6 +25,7 @@ from fem.docket.content import content_hash
 from fem.docket.file import read_docket
 from fem.errors import DocketError, Problem, StoreError, SystemLibraryMissing
 from fem.results import store
+from fem.results.numbers import Writer
 from fem.results.record import TurnNote
 from fem.results.verdicts import Call
 from fem.stock import library
@@ -336,7 +337,10 @@ def test_open_record_from_the_shelf_says_so(docket, made, record):
     call("vouch", docket)
     told = call("vouch", docket)
     assert made.calls == ["vouch"]
-    assert f"This vouch is open, for its work ended so: {record.turns[-1].then}" in told.output
+    (first, *others) = record.reasons
+    assert f"This vouch is open: {Writer.of(record).words(first.text)}" in told.output
+    assert f"(and {len(others)} more)" in told.output or not others
+    assert record.turns[-1].then not in told.output.split("Gauges")[0]
     made.state[0] = "vouched"
     call("vouch", docket, "--again")
     assert "This vouch is open" not in call("vouch", docket).output
@@ -397,6 +401,31 @@ def test_check_asks_about_a_section_of_odd_size(docket, unit, asks):
     told = call("check", docket).output
     assert ("is the unit of length right?" in told) == asks
     assert ("111.8 m across" in told) == asks  # the diagonal of 100 by 50
+
+
+def test_check_notes_that_two_exposures_on_an_edge_add_up(docket):
+    sun = '[[exposure]]\nname = "sun"\non = "bar.bottom"\nflux = 800\n'
+    docket.write_text(DOCKET + sun)
+    (note,) = json.loads(call("check", docket, "--json").stdout)["notes"]
+    assert note.startswith("bar.bottom faces room and sun")
+    assert "adds up" in note
+    docket.write_text(DOCKET)
+    assert json.loads(call("check", docket, "--json").stdout)["notes"] == []
+
+
+@pytest.mark.parametrize(("unit", "limit", "asks"), [("K", 55, True), ("K", 355, False), ("degC", 55, False)])
+def test_check_asks_about_kelvin_that_look_like_celsius(docket, unit, limit, asks):
+    text = DOCKET.replace('temperature = "degC"', f'temperature = "{unit}"')
+    docket.write_text(text.replace("temperature = 55", f"temperature = {limit}"))
+    notes = json.loads(call("check", docket, "--json").stdout)["notes"]
+    assert [note for note in notes if "are they in °C?" in note] == notes
+    assert bool(notes) == asks
+
+
+@pytest.mark.parametrize(("instants", "says"), [("[]", "1 break to land on"), ("[3]", "2 breaks to land on")])
+def test_check_counts_breaks_in_good_grammar(docket, instants, says):
+    docket.write_text(DOCKET.replace("report_every = 1", f"report_every = 1\ninstants = {instants}"))
+    assert says in call("check", docket).output
 
 
 def test_names_that_look_like_emoji_or_markup_are_shown_as_they_are(docket):

@@ -427,6 +427,103 @@ def test_what_is_no_toml_names_its_line(text, says):
     assert says in problem.value or says in problem.allowed
 
 
+@pytest.mark.parametrize(
+    ("old", "new", "hint"),
+    [
+        ('name = "deck"', "name = deck", 'quotes: "deck"'),
+        ('name = "deck"', "name = the deck # ours", 'quotes: "the deck"'),
+        ('name = "deck"', 'name = "deck', "close the quotes"),
+        ("end = 120", "end = 1,5", "decimal point, not a comma: 1.5"),
+        ("end = 120", "end = 2 h", 'quotes: "2 h"'),
+        ("void = true", "void = True", "small letters"),
+        ('[stock."my brick"]', "[stock.my brick]", "name with blanks in quotes"),
+        ("end = 120", "end 120", "key = value"),
+        ("[500, 0], [0, 0] ]", "[500, 0] [0, 0] ]", "comma between the rows"),
+        ("[500, 0], [0, 0] ]", "[500, 0 0], [0, 0] ]", "mend the line"),
+    ],
+)
+def test_slip_in_toml_quotes_its_line_and_guesses(old, new, hint):
+    assert DECK.count(old) == 1
+    row = DECK[: DECK.index(old)].count("\n") + 1
+    (problem,) = problems(DECK.replace(old, new)).values()
+    assert problem.value.startswith(f"line {row}, column ")
+    assert new in problem.value
+    assert hint in problem.hint
+
+
+@pytest.mark.parametrize("name", ["region", "exposure", "gauge", "limit", "variant"])
+def test_single_brackets_of_a_list_of_tables_are_told_once(deck, name):
+    first = DECK.replace(f"[[{name}]]", f"[{name}]", 1)
+    last = f"[[{name}]]".join(DECK.split(f"[[{name}]]")[:-1]) + f"[{name}]" + DECK.split(f"[[{name}]]")[-1]
+    for text in (first, last):
+        (problem,) = problems(text, deck.parent).values()
+        assert f"[{name}]" in problem.value
+        assert f"[[{name}]] in double brackets" in problem.hint
+
+
+def test_lost_path_of_a_variant_is_told_once(deck):
+    text = DECK.replace('"exposure.kiln.film.coefficient" = "30', '"exposure.klin.film.coefficient" = "30')
+    for broken in (text, text.replace("planar", "plannar")):
+        with pytest.raises(DocketError) as caught:
+            read_text(broken, logs=LogFolder(deck.parent))
+        told = [problem for problem in caught.value.problems if "klin" in problem.place]
+        assert [problem.value for problem in told] == ['"30 W/m2K"']
+
+
+def test_doubled_region_is_one_problem_though_an_exposure_names_an_edge_of_the_second(deck):
+    (problem,) = problems(
+        DECK.replace('name = "duct"\nvoid', 'name = "deck"\nvoid').replace('"duct.*"', '"deck.wall"'), deck.parent
+    ).values()
+    assert (problem.place, problem.hint) == ('region "deck", name', "rename one of the 2")
+
+
+def test_limit_at_a_point_asks_for_a_gauge_once(deck):
+    text = DECK.replace('at = "beam web"', "at = [50, 5]")
+    found = problems(text, deck.parent)
+    assert list(found) == ['limit 1 "steel keeps its strength", at']
+    (problem,) = found.values()
+    assert '"anywhere"' in problem.allowed
+    assert "[[gauge]]" in problem.hint
+
+
+def test_choices_stand_in_double_quotes(deck):
+    text = DECK.replace('"stay below"', '"stay blow"').replace('"planar"', '"plannar"')
+    found = problems(text, deck.parent)
+    assert len(found) == 2
+    for problem in found.values():
+        assert "'" not in problem.allowed
+        assert '"' in problem.allowed
+
+
+@pytest.mark.parametrize(
+    ("stock", "meant"),
+    [("nosuch", ()), ("mineral wool", ("mineral wool",)), ("wool", ("wool",)), ("my brik", ('"my brick"',))],
+)
+def test_unknown_stock_suggests_what_has_its_words_and_nothing_else(deck, stock, meant):
+    found = problems(DECK.replace('stock = "fireclay brick"', f'stock = "{stock}"'), deck.parent)
+    (problem,) = found.values()
+    assert 'own stock ("my brick")' in problem.allowed
+    suggested = problem.hint.partition("?")[0].partition("did you mean ")[2]
+    assert bool(suggested) == bool(meant)
+    assert all(word in name for word in meant for name in suggested.split(" or "))
+
+
+def test_docket_without_stock_of_its_own_says_so(deck):
+    text = DECK.replace('"my brick"', '"fireclay brick"').replace('stock = "fireclay brick"', 'stock = "nosuch"')
+    text = text[: text.index("# our own")] + text[text.index('[[exposure]]\nname = "kiln"') :]
+    text = text.replace('"stock.my brick.density" = 2100\n', "")
+    for problem in problems(text, deck.parent).values():
+        assert "none of its own" in problem.allowed
+        assert "(none)" not in problem.allowed
+
+
+def test_reporting_interval_longer_than_the_clock_is_refused(deck):
+    (problem,) = problems(DECK.replace("report_every = 5", "report_every = 121"), deck.parent).values()
+    assert (problem.place, problem.value) == ("clock, report_every", "121 min")
+    assert "120 min" in problem.allowed
+    assert read_text(DECK.replace("report_every = 5", "report_every = 120"), logs=LogFolder(deck.parent))
+
+
 def test_log_faults_stand_in_the_docket_with_their_lines(deck):
     (deck.parent / "kiln.csv").write_text("minute;kiln\n0;20\n1;\n1;x\n0,5;22\n130;300\n")
     found = problems(DECK, deck.parent)

@@ -142,6 +142,10 @@ def test_extreme_that_the_band_cannot_tell_from_the_start_is_at_the_start():
     assert peak_text(METRIC, told, WEB, lowest=True) == ("19.999 ± 0.008 °C", "the start (or up to 13.00 min)")
     told = history(times, [20.0, 21.0, 22.0, 90.0], 0.008)
     assert peak_text(METRIC, told, WEB, lowest=True)[1] == "the start"
+    told = history([0.0, 1.2, 120.0, 1800.0], [20.0, 19.999, 22.0, 90.0], 0.008)  # 0.02 min rounds to the begin or not
+    assert peak_text(METRIC, told, WEB, lowest=True)[1] == "the start (or up to 0.02 min)"
+    told = history([0.0, 0.12, 120.0, 1800.0], [20.0, 19.999, 22.0, 90.0], 0.008)
+    assert peak_text(METRIC, told, WEB, lowest=True)[1] == "the start"
     told = history(times, [20.0, 15.0, 22.0, 90.0], 0.008)
     assert peak_text(METRIC, told, WEB, lowest=True)[1] == "2 min"
 
