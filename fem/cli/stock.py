@@ -12,6 +12,9 @@ if TYPE_CHECKING:
 
 app = typer.Typer(rich_markup_mode=None)
 
+MOST = 3
+"""Stocks that an error suggests."""
+
 AsJson = Annotated[bool, typer.Option("--json", help="Print JSON on the output.")]
 Name = Annotated[str, typer.Argument(metavar="NAME", help="The stock's name, in quotes if it has blanks.")]
 
@@ -88,7 +91,7 @@ def named(name: str) -> "Stock":
     Raises
     ------
     DocketError
-        If there is none, with the nearest names.
+        If there is none, with the names that hold its words, or else with the nearest.
     """
     from fem.errors import DocketError
     from fem.stock import library, nearest
@@ -96,6 +99,6 @@ def named(name: str) -> "Stock":
     for stock in library().values():
         if name.casefold() in (label.casefold() for label in (stock.name, *stock.aliases)):
             return stock
-    close = ", ".join(f'"{label}"' for label in nearest(name))
+    close = ", ".join(f'"{label}"' for label in nearest(name, MOST))
     hint = f"did you mean {close}?" if close else "`heatvouch stock list` shows all names"
     raise DocketError.single("stock", f'"{name}"', "a name of the library", hint)

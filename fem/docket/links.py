@@ -16,7 +16,6 @@ from fem.docket.parts import LISTS, Parts
 from fem.errors import Said, shown
 from fem.quantities.strict import fault, nearest, unknown
 from fem.schedules.models import span_of, varies
-from fem.stock.models import find
 from fem.stock.models import nearest as nearest_stocks
 
 MOST_STOCKS = 3
@@ -75,7 +74,7 @@ def _stocks(parts: Parts) -> list[InitErrorDetails]:
 def _stock_hint(parts: Parts, name: str) -> str:
     """Return what an unknown stock may have meant: own stock spelt like it, the library's with its words, or like it."""
     own = nearest(name, parts.stocks)
-    meant = [own] if own else [stock.name for stock in find(name)][:MOST_STOCKS] or nearest_stocks(name, 1)
+    meant = [own] if own else nearest_stocks(name, MOST_STOCKS)
     return f"did you mean {' or '.join(map(shown, meant))}?" if meant else "use one of these"
 
 

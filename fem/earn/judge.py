@@ -89,8 +89,10 @@ def wanted_goals(docket: Docket, figures: Figures) -> list[Goal]:
         band: float | None = None
         if key.kind == "gauge":
             band = own.get(key.name) or wanted.gauges
-        elif key.kind in ("highest", "lowest", "mean"):
+        elif key.kind in ("highest", "lowest"):
             band = wanted.regions
+        elif key.kind == "mean":
+            band = wanted.means
         elif key.kind == "flow":
             band = through.get(key.name) or wanted.heat
         elif key.kind == "stored":

@@ -200,7 +200,7 @@ def _rank(word: str, places: list[str]) -> int | None:
 
 
 def nearest(name: str, n: int = 3) -> list[str]:
-    """Return up to n names of the library that the given name may have meant, for the hint of an error message.
+    """Return what a name that the library has not may have meant: up to n stocks that hold its words, or else the most alike one.
 
     Examples
     --------
@@ -208,6 +208,6 @@ def nearest(name: str, n: int = 3) -> list[str]:
     'fireclay brick'
     """
     owner = {label.casefold(): stock.name for stock in library().values() for label in (*stock.aliases, stock.name)}
-    close = difflib.get_close_matches(name.casefold(), owner, n=4 * n, cutoff=0.6)
-    contained = [stock.name for stock in find(name)] if name.strip() else []
-    return list(dict.fromkeys([owner[label] for label in close] + contained))[:n]
+    worded = [stock.name for stock in find(name)] if name.strip() else []
+    alike = difflib.get_close_matches(name.casefold(), owner, n=1, cutoff=0.6)
+    return worded[:n] or [owner[label] for label in alike]

@@ -4,6 +4,7 @@ import io
 import json
 import math
 import os
+import re
 import signal
 import subprocess
 import sys
@@ -426,6 +427,17 @@ def test_check_asks_about_kelvin_that_look_like_celsius(docket, unit, limit, ask
 def test_check_counts_breaks_in_good_grammar(docket, instants, says):
     docket.write_text(DOCKET.replace("report_every = 1", f"report_every = 1\ninstants = {instants}"))
     assert says in call("check", docket).output
+
+
+@pytest.mark.parametrize(
+    ("name", "meant"),
+    [("nosuch", ()), ("mineral wool", ("mineral wool",)), ("", ()), ("fireclay brik", ("fireclay brick",))],
+)
+def test_unknown_stock_suggests_names_with_its_words_first(name, meant):
+    told = " ".join(call("stock", "show", name).output.split())
+    suggested = re.findall(r'"([^"]+)"', told.partition("did you mean")[2])
+    assert bool(suggested) == bool(meant)
+    assert all(words in label for words in meant for label in suggested)
 
 
 def test_names_that_look_like_emoji_or_markup_are_shown_as_they_are(docket):
