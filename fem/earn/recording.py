@@ -18,18 +18,21 @@ from fem.runs.study import Study
 from fem.solve.march import Outcome
 from fem.solve.problem import Problem
 
+CROWDED = 300
+"""Breaks from which on landing on each of them, not the error, decides the number of steps; our own judgement."""
 LIBRARIES = ("heatvouch", "numpy", "scipy", "scikit-fem", "pygmsh", "gmsh", "cvxopt")
 
 
-def reasons_of(judgement: Judgement, outcome: str, kind: str, *, banded: bool) -> tuple[Reason, ...]:
-    """Return why the standing is open; empty when nothing is left to close. `banded`: the study had three meshes."""
+def reasons_of(judgement: Judgement, outcome: str, kind: str, *, banded: bool, breaks: int = 0) -> tuple[Reason, ...]:
+    """Return why the standing is open; empty when nothing is left to close. `banded`: the study had three meshes; `breaks`: to land on."""
     reasons = []
     if kind == "quick look":
         reasons.append(Reason("a quick look makes no claim: one run on one mesh has no band", "vouch for it"))
     if outcome != Outcome.finished.value:
-        reasons.append(
-            Reason(f"the work did not finish: {outcome}", "run it again, with a larger allowance if that ended it")
-        )
+        close = "run it again, with a larger allowance if that ended it"
+        if breaks > CROWDED:
+            close += f"; or thin the logs: each of {breaks} kinks and jumps is landed on (thin = 1 drops rows within 1 of the line)"
+        reasons.append(Reason(f"the work did not finish: {outcome}", close))
     if not banded:  # without three meshes there is no band, and so nothing that a band could show
         return tuple(
             reasons + [Reason(f.message, f.close) for f in judgement.findings if f.blocks and f.check != "outcome"]
@@ -63,7 +66,7 @@ def record_of(
 ) -> Record:
     """Return the record of a study."""
     finest = study.finest
-    reasons = reasons_of(judgement, outcome, kind, banded=len(study.levels) >= 3)
+    reasons = reasons_of(judgement, outcome, kind, banded=len(study.levels) >= 3, breaks=len(problem.breaks()))
     faces = tuple(f"{face.name} on {face.edge}" for face in problem.faces)
     ledger = ledger_of(finest, faces, finest.mesh.plan.region_names, tuple(law is not None for law in problem.source))
     return Record(

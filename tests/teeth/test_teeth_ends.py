@@ -176,3 +176,12 @@ def test_the_interrupted_gauge_history_is_that_of_the_whole_up_to_there():
     key, t = Key("gauge", "near"), part.figures.grid.t
     assert 1 < len(t) < len(whole.figures.grid.t)
     np.testing.assert_array_equal(part.figures.series(key)[0], whole.figures.series(key)[0][: len(t)])
+
+
+@pytest.mark.parametrize(("rows", "told"), [(500, True), (50, False)])
+def test_a_crowded_log_is_named_when_the_allowance_ran_out(rows, told):
+    points = [[600.0 * i / rows, 300.0 + i % 2] for i in range(rows + 1)]
+    hot = {"hot": {"on": ("slab.right",), "film": {"coefficient": 50.0, "ambient": {"points": points}}}}
+    record = vouch(slab_docket(exposures=hot, allowance={"seconds": 1e-3}))
+    assert record.outcome != "finished"
+    assert any("thin the logs" in reason.close for reason in record.reasons) is told
