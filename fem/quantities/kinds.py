@@ -32,8 +32,6 @@ class Kind:
     absolute: bool = False
 
 
-PER_DEPTH = "50 (a plain number: per metre of depth when planar, whole for a body of revolution)"
-
 KINDS = {
     kind.name: kind
     for kind in (

@@ -8,7 +8,6 @@ from numpy.typing import NDArray
 Floats = NDArray[np.float64]
 
 TEMPERATURES = ("gauge", "highest", "lowest", "mean")
-HEATS = ("flow", "heat", "made", "stored")
 
 
 @dataclass(frozen=True, order=True)

@@ -1,6 +1,7 @@
 """What all schedules share: values of the field's own kind, and polylines that end where they end."""
 
 import math
+from abc import abstractmethod
 from typing import Annotated, Any, Literal
 
 import numpy as np
@@ -55,9 +56,9 @@ Row = tuple[Time, Value]
 class Schedule(Strict):
     """The base of all schedules."""
 
+    @abstractmethod
     def law(self, begin: float, end: float) -> Law:
         """Return the schedule as a law; its breaks are complete from begin to end, s."""
-        raise NotImplementedError
 
     def span(self) -> tuple[float, float]:
         """Return the times, s, between which the schedule says something; infinite where it always does."""
@@ -76,9 +77,9 @@ class Knotted(Schedule):
     before: Outside = Field("refuse", description='What stands before the first time: "refuse", or "hold" its value.')
     after: Outside = Field("refuse", description='What stands after the last time: "refuse", or "hold" its value.')
 
+    @abstractmethod
     def knots(self) -> tuple[Floats, Floats]:
         """Return times, s on the clock, and values, SI; both (n,), a time given twice is a jump."""
-        raise NotImplementedError
 
     def law(self, begin: float, end: float) -> Law:  # noqa: ARG002 - knots do not depend on the clock
         """Return the polyline through the knots."""

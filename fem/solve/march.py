@@ -20,8 +20,6 @@ NEWTON_PART = 3e-6
 """Newton's remaining error as a part of the step tolerance: small enough for the heat ledger to close to 1e-6 of the heat turned over."""
 SMALLEST_PIECE = 0.1
 """A replayed step on which Newton fails is halved, down to pieces of this part of it."""
-STALLED = 100.0
-"""A change that no longer falls, but is below this multiple of the tolerance (1e-4 of the step's), is rounding and is let pass."""
 SURELY = 0.1
 """A change that is this part of the tolerance ends Newton's method even when its rate is not known yet."""
 REUSE_BELOW = 0.05
@@ -154,10 +152,6 @@ class StageSolver:
                 if size * rate / (1.0 - rate) <= self.tolerance:
                     return T, problem.heat(T), problem.loads(t, T), K
             last = size
-        if (
-            last <= STALLED * self.tolerance
-        ):  # rounding, not Newton's method, is what is left; the ledger shows what it amounts to
-            return T, problem.heat(T), problem.loads(t, T), K
         return None
 
 

@@ -14,11 +14,11 @@ from fem.mesh.make import make_mesh
 from fem.results.findings import Finding
 from fem.results.history import Key
 from fem.results.verdicts import Call
-from fem.runs.study import Bench
+from fem.runs.study import Bench, TooDear
 from fem.solve.march import Outcome
 from fem.solve.run import run
 from fem.solve.stepping import Steps
-from fem.vouch import vouch
+from fem.vouch import FIRST_MESHES, vouch
 from tests.support.cases import box, docket_of, region, slab_docket
 from tests.support.series import slab_film
 
@@ -200,3 +200,41 @@ def test_no_band_is_narrower_than_a_fiftieth_of_the_wanted_one_and_such_a_band_s
     assert record.verdicts[0].call is Call.too_close
     assert not any(f.check == "order" for f in record.findings)
     assert len(record.turns) == 1
+
+
+# --- a first study that does not fit the allowance ------------------------------------------------------------------------------------
+
+
+def first_mesh_cells():
+    docket = slab_docket()
+    posed = pose(docket)
+    return [len(make_mesh(posed.plan, gauges=posed.gauges.points, finer=finer).cells) for finer in FIRST_MESHES]
+
+
+def test_an_allowance_for_a_coarser_first_mesh_gets_one():
+    usual, coarse = first_mesh_cells()
+    assert coarse < usual
+    record = vouch(slab_docket(allowance={"cells": 16 * usual - 1, "seconds": 60.0}))
+    assert record.facts["cells"][-1] <= 16 * usual - 1
+    assert record.facts["cells"][0] <= coarse or len(record.turns) > 2
+    assert "half as many cells across" in record.turns[0].then
+    assert np.isfinite(record.figures.band).any()
+
+
+def test_an_allowance_for_no_three_meshes_gives_one_run_and_says_so():
+    coarse = first_mesh_cells()[-1]
+    assert 16 * coarse > 100, "the least allowance that a docket may state"
+    record = vouch(slab_docket(allowance={"cells": 100, "seconds": 60.0}))
+    assert record.standing == "open"
+    assert f"three meshes would need {16 * coarse} cells" in record.outcome
+    assert np.isinf(record.figures.band).all()
+    assert record.turns[-2].then.startswith("one run alone")
+
+
+def test_a_study_that_would_take_too_long_is_not_begun():
+    posed = pose(slab_docket())
+    bench = Bench(posed.problem, posed.gauges, tolerance=0.1)
+    mesh = make_mesh(posed.plan, gauges=posed.gauges.points)
+    with pytest.raises(TooDear, match="about"):
+        bench.first(mesh, most_seconds=1e-9)
+    assert len(bench.first(mesh, most_seconds=1e9).levels) == 3

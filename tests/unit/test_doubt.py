@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from fem.results.history import Key
-from fem.runs.doubt import cell_doubt, map_doubt, parents_max, passes_needed, step_doubt
+from fem.runs.doubt import cell_doubt, map_doubt, node_doubt, parents_max, passes_needed, step_doubt
 from fem.runs.study import split_cells
 from tests.support.cases import facts_of, gauges_at
 from tests.support.grids import face, problem_on, strip
@@ -27,6 +27,9 @@ def test_a_quench_owes_most_where_it_bites():
     assert x[np.argmax(worst)] > 0.8
     assert worst[x < 0.3].max() < 0.2 * worst.max()
     assert map_doubt(s).max() == pytest.approx(worst.max())
+    by_hand = np.abs(s.levels[2].frames[:, : len(s.levels[1].mesh.points)] - s.levels[1].frames).max(axis=0)
+    assert np.array_equal(node_doubt(s), by_hand)
+    assert by_hand.max() > 0.0
 
 
 def test_a_planted_difference_is_found_in_its_own_cell():

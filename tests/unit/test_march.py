@@ -166,3 +166,26 @@ def test_no_step_errs_by_more_than_its_tolerance(tolerance):
     sizes = [step.t1 - step.t0 for step in steps]
     assert max(sizes) >= 16 * sizes[0]
     assert march.rejected <= 0.2 * len(steps)
+
+
+def test_after_a_held_jump_only_the_flow_of_that_face_is_unknown():
+    """The film's flow right after the jump is known: its coefficient times the difference, which nothing has changed yet."""
+    mesh = strip(cells=4)
+    law = Law(lambda t: np.where(t < 0.4, 300.0, 400.0), frozenset({"t"}), (Break(0.4, jump=True),))
+    faces = [face(mesh.plan, "part 0.left", held=law), face(mesh.plan, "part 0.right", film=(2.0, 350.0))]
+    problem = problem_on(mesh.plan, faces, start=300.0, end=1.0)
+    history = run(mesh, problem, gauges_at(), tolerance=0.1, first=0.01).history
+    held, film = (history.row(Key("flow", f.name)) for f in faces)
+    after = int(np.flatnonzero(history.t0 == 0.4)[0])
+    assert np.isnan(history.v0[held, after])
+    assert history.v0[film, after] == pytest.approx(history.v1[film, after - 1], rel=1e-6)
+
+
+def test_newton_keeps_its_digits_in_a_good_conductor():
+    """Conduction is reckoned from differences of temperature: Newton reaches 6e-11 K at 1000 K, though k is 1e7 times the film's worth."""
+    mesh = strip(cells=4)
+    faces = [face(mesh.plan, "part 0.left", radiant=(0.8, 300.0))]
+    problem = problem_on(mesh.plan, faces, k=2e8, rho_c=1e3, start=1000.0, end=1.0)
+    result = run(mesh, problem, gauges_at(), tolerance=2e-5, steps=Steps(np.linspace(0.0, 1.0, 9)))
+    assert result.outcome is Outcome.finished
+    assert abs(result.face_heat.sum() - result.stored) <= 1e-9 * abs(result.stored)

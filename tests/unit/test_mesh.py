@@ -16,9 +16,9 @@ from fem.mesh.data import Mesh
 from fem.mesh.draw import Drawer
 from fem.mesh.gmsh_session import gmsh_session
 from fem.mesh.make import make_mesh
-from fem.mesh.quality import quality
 from fem.mesh.verify import bows, verify
 from fem.section.build import build_plan
+from tests.support.quality import quality
 from tests.support.shapes import cells_crossed, disc, outline, rect, ring_sector
 
 T_PROFILE = [

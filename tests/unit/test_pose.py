@@ -108,6 +108,20 @@ def test_a_gauge_outside_is_refused_with_its_place_in_the_dockets_units():
     assert "(0.5, 0.5) m" in text
 
 
+def test_a_gauge_that_is_not_in_the_region_it_names_is_refused():
+    two = docket_of(
+        [region("a", box(0, 0, 1, 1)), region("b", box(1, 0, 2, 1))], {"x": {"on": ("a.left",), "held": 300.0}}, end=1.0,
+        gauges={"inside": (0.5, 0.5), "border": (1.0, 0.5)},
+    )  # fmt: skip
+    for gauge, name in (("inside", "a"), ("border", "a"), ("border", "b")):
+        pose(two.with_changes({f"gauge.{gauge}.region": name}))
+    with pytest.raises(DocketError) as refused:
+        pose(two.with_changes({"gauge.inside.region": "b"}))
+    (problem,) = refused.value.problems
+    assert problem.place == 'gauge "inside", region'
+    assert '"a", which lies there' in problem.allowed
+
+
 def test_all_problems_are_told_at_once():
     texts = refused(two({"a": {"on": ("left.right",), "film": FILM}, "b": {"on": ("right.left",), "flux": 1.0}}))
     assert len(texts) == 2
