@@ -9,10 +9,10 @@ from fem.errors import MeshError
 from fem.mesh.arc_room import cramped
 from fem.mesh.data import Mesh
 from fem.mesh.make import make_mesh
-from fem.mesh.quality import quality
 from fem.mesh.refine import local, uniform
 from fem.mesh.verify import verify
 from fem.section.build import build_plan
+from tests.support.quality import quality
 from tests.support.shapes import disc, outline, rect, ring_sector
 
 STRAIGHT = [rect("a", 0, 0, 1, 0.4), outline("b", [(0.5, 0.1), (0.9, 0.1), (0.7, 0.3)])]
